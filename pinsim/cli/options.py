@@ -1,0 +1,144 @@
+"""Quantities with units as option types, and the groups of options that commands share."""
+
+from collections.abc import Callable
+from typing import Any, TypeVar
+
+import click
+
+from pinsim import units
+from pinsim.errors import UnitError
+
+Command = TypeVar("Command", bound=Callable[..., Any])
+
+
+class Quantity(click.ParamType[float]):
+    """Text with a unit to a number in pinsim's own unit."""
+
+    def __init__(self, name: str, parse: Callable[[object, str], float]) -> None:
+        self.name = name
+        self._parse = parse
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> float:
+        """Return the number; click shows our text for a wrong one."""
+        if isinstance(value, float):
+            return value
+        where = param.opts[0] if param is not None else self.name
+        try:
+            return self._parse(value, where)
+        except UnitError as error:
+            raise click.UsageError(str(error)) from None
+
+
+LENGTH = Quantity("length", units.length_mm)
+DISTANCE = Quantity("distance", units.distance_mm)
+ANGLE = Quantity("angle", units.angle_deg)
+WAVELENGTH = Quantity("wavelength", units.wavelength_nm)
+TIME = Quantity("time", units.time_s)
+
+
+def _all(*options: Callable[[Command], Command]) -> Callable[[Command], Command]:
+    def decorate(command: Command) -> Command:
+        for option in reversed(options):
+            command = option(command)
+        return command
+
+    return decorate
+
+
+scene_options = _all(
+    click.option(
+        "--view",
+        "view_deg",
+        type=ANGLE,
+        help="The photo's angle of view from its left edge to its right; else from its Exif data.",
+    ),
+    click.option(
+        "--distance", "distance_mm", type=DISTANCE, help="How far everything is: 4m, infinity."
+    ),
+    click.option(
+        "--distance-map",
+        type=click.Path(),
+        help="A grey picture of the photo's size whose values are distances; 0 is infinity.",
+    ),
+    click.option("--map-step", "map_step_mm", type=LENGTH, help="What one value of the map means."),
+    click.option(
+        "--projection",
+        type=click.Choice(["rectilinear", "equirectangular"]),
+        help="How the photo maps angles: rectilinear as lenses do, or equirectangular panoramas.",
+    ),
+    click.option(
+        "--beyond",
+        type=click.Choice(["mirror", "extend", "black"]),
+        help="What is imagined beyond the photo's edge, for the little light from there.",
+    ),
+)
+
+_single_film = (
+    click.option(
+        "--film", metavar="FRAME", help="A frame such as 6x6, 36x24, 4x5, or a size: 90mmx60mm."
+    ),
+    click.option("--portrait", is_flag=True, help="Hold the frame upright."),
+    click.option("--plate", "plate_mm", type=LENGTH, help="Thickness of the plate with the hole."),
+    click.option("--shift", "shift_mm", type=LENGTH, help="Move the film's middle to the right."),
+    click.option("--rise", "rise_mm", type=LENGTH, help="Move the film's middle up."),
+    click.option(
+        "--material", metavar="NAME", help="What is exposed, such as colour, panchromatic-100."
+    ),
+    click.option(
+        "--tone", type=click.Choice(["positive", "negative"]), help="Tones of the picture."
+    ),
+)
+
+camera_options = _all(
+    click.option("--hole", "hole_mm", type=LENGTH, help="Diameter of the hole: 0.30mm."),
+    click.option(
+        "--focal-length", "focal_mm", type=LENGTH, help="From the hole to the film: 60mm."
+    ),
+    *_single_film,
+)
+
+cameras_options = _all(
+    click.option(
+        "--hole",
+        "holes_mm",
+        type=LENGTH,
+        multiple=True,
+        help="Diameter of a hole; repeat for more.",
+    ),
+    click.option(
+        "--focal-length",
+        "focals_mm",
+        type=LENGTH,
+        multiple=True,
+        help="From the hole to the film; repeat for more.",
+    ),
+    *_single_film,
+)
+
+light_options = _all(
+    click.option(
+        "--wavelength", "wavelength_nm", type=WAVELENGTH, help="All light of one colour: 550nm."
+    ),
+    click.option(
+        "--time", "time_s", type=TIME, help="Exposure time: shows over- and underexposure."
+    ),
+    click.option(
+        "--ev", type=float, help="Brightness of the scene, EV at ISO 100; sun is about 15."
+    ),
+    click.option(
+        "--look",
+        type=click.Choice(["upright", "screen", "emulsion"]),
+        default="upright",
+        show_default=True,
+        help="Seen as the scene, from behind the film, or on its exposed face.",
+    ),
+)
+
+output_options = _all(
+    click.option(
+        "-o", "--output", type=click.Path(), help="Where to write; the ending sets the kind."
+    ),
+    click.option("--overwrite", is_flag=True, help="Replace the file if it exists."),
+)

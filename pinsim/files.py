@@ -1,0 +1,161 @@
+"""Writing results: a file appears whole or not at all, and never in place of another unless told."""
+
+import os
+import tempfile
+from collections.abc import Callable, Sequence
+from functools import lru_cache
+from pathlib import Path
+from typing import Any, BinaryIO
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pinsim.errors import OutputError
+
+PICTURE_SUFFIXES = (".png", ".jpg", ".jpeg", ".tif", ".tiff")
+_INCH_MM = 25.4
+
+
+def check_target(
+    path: Path, *, overwrite: bool, suffixes: Sequence[str], inputs: Sequence[Path] = ()
+) -> None:
+    """Refuse, before any work is done, a target that could not be written at the end."""
+    if path.suffix.lower() not in suffixes:
+        raise OutputError(
+            f"{path}: cannot tell the kind of file from {path.suffix or 'no ending'!r}; "
+            f"use one of {', '.join(suffixes)}."
+        )
+    if path.is_dir():
+        raise OutputError(f"{path} is a folder; give a file name in it.")
+    if not path.parent.is_dir():
+        raise OutputError(f"{path}: the folder {path.parent} does not exist; make it first.")
+    if not os.access(path.parent, os.W_OK):
+        raise OutputError(f"{path}: the folder {path.parent} cannot be written to.")
+    for source in inputs:
+        if path.exists() and source.exists() and os.path.samefile(path, source):
+            raise OutputError(f"{path} is what the picture is made from; give another name.")
+    if path.exists() and not overwrite:
+        raise OutputError(
+            f"{path} exists already; give another name, or allow it with --overwrite."
+        )
+
+
+def write_whole(path: Path, write: Callable[[BinaryIO], None], *, overwrite: bool) -> None:
+    """Write a file beside its target and move it there at the end.
+
+    Raises OutputError when the target exists and must not be replaced, or the disk refuses.
+    """
+    try:
+        handle, name = tempfile.mkstemp(prefix=f".{path.stem}-", suffix=".part", dir=path.parent)
+    except OSError as problem:
+        raise OutputError(f"{path} cannot be written: {problem.strerror}.") from None
+    part = Path(name)
+    try:
+        with os.fdopen(handle, "wb") as file:
+            write(file)
+        umask = os.umask(0)
+        os.umask(umask)
+        part.chmod(0o666 & ~umask)  # mkstemp makes files private; a picture is an ordinary file
+        if overwrite:
+            part.replace(path)
+        else:
+            _place_new(part, path)
+    except FileExistsError:
+        raise OutputError(
+            f"{path} exists already; give another name, or allow it with --overwrite."
+        ) from None
+    except OSError as problem:
+        raise OutputError(f"{path} cannot be written: {problem.strerror or problem}.") from None
+    finally:
+        part.unlink(missing_ok=True)
+
+
+def _place_new(part: Path, path: Path) -> None:
+    """Give the finished file its name only if nobody has taken it meanwhile."""
+    try:
+        os.link(part, path)
+    except FileExistsError:
+        raise
+    except OSError:  # a file system without links: FAT sticks, some network drives
+        if path.exists():
+            raise FileExistsError(path) from None
+        part.rename(path)
+
+
+@lru_cache(maxsize=1)
+def srgb_profile() -> bytes:
+    """Return the sRGB colour profile that every picture is tagged with."""
+    from PIL import ImageCms
+
+    profile = bytearray(ImageCms.ImageCmsProfile(ImageCms.createProfile("sRGB")).tobytes())
+    # The header carries the moment of making; fixed, so that equal pictures are equal files.
+    profile[24:36] = bytes.fromhex("07ea00010001000000000000")
+    return bytes(profile)
+
+
+def encode_picture(
+    codes: NDArray[Any], suffix: str, *, dpi: float, description: str
+) -> Callable[[BinaryIO], None]:
+    """Return what writes sRGB codes, (rows, columns, 1 or 3) uint8 or uint16, as a file of a kind.
+
+    dpi : so that it prints at its true size. description : what the file says of itself.
+    """
+    if codes.shape[2] == 1:
+        codes = codes[..., 0]
+    codes = np.ascontiguousarray(codes)
+    if suffix in {".tif", ".tiff"}:
+        return lambda file: write_tiff(file, codes, dpi=dpi, description=description)
+    if codes.dtype != np.uint8:
+        raise OutputError(f"a {suffix} file is written with 8 bits; for 16 use .tif.")
+    from PIL import Image, PngImagePlugin
+
+    image = Image.fromarray(codes)
+    if suffix == ".png":
+        text = PngImagePlugin.PngInfo()
+        text.add_text("Description", description)
+        return lambda file: image.save(
+            file,
+            "PNG",
+            dpi=(dpi, dpi),
+            icc_profile=srgb_profile() if image.mode == "RGB" else None,
+            pnginfo=text,
+            compress_level=4,
+        )
+    return lambda file: image.save(
+        file,
+        "JPEG",
+        quality=95,
+        subsampling=0,  # 4:4:4: colour edges stay where the film has them
+        dpi=(dpi, dpi),
+        icc_profile=srgb_profile() if image.mode == "RGB" else None,
+        comment=description,
+    )
+
+
+def write_tiff(file: BinaryIO, data: NDArray[Any], *, dpi: float, description: str) -> None:
+    """Write codes (tagged sRGB) or float exposure (linear, untagged) as a TIFF."""
+    import imageio.v3 as iio
+
+    coloured = data.ndim == 3
+    extra: dict[str, Any] = {}
+    if coloured and data.dtype != np.float32:
+        extra["iccprofile"] = srgb_profile()
+    iio.imwrite(
+        file,
+        data,
+        plugin="tifffile_v3",
+        extension=".tif",
+        photometric="rgb" if coloured else "minisblack",
+        compression="zlib",
+        resolution=(dpi, dpi),
+        resolutionunit="INCH",
+        description=description,
+        metadata=None,
+        software="pinsim",
+        **extra,
+    )
+
+
+def dpi_for(pitch_mm: float) -> float:
+    """Return dots per inch for a pixel pitch."""
+    return _INCH_MM / pitch_mm

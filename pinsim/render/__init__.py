@@ -1,0 +1,12 @@
+"""From a Scene and a Camera to a Picture. Data moves one way, in this order:
+
+plan.py        everything decided before any pixel is touched: grid, margin, transfer functions
+project.py     Scene -> FilmView: light, distance and coverage on the film's own grid
+illuminate.py  FilmView -> FilmView: falloff and plate shade
+spread.py      FilmView -> exposure: every point of light spread by the hole's transfer function
+develop.py     exposure -> tones, positive or negative, upright or as seen on the film
+picture.py     the Picture: what came out, with its scale, and how it is saved
+preview.py     the whole road, in one call
+
+resample.py    band-limited resampling along one axis, as block-banded matrices (for project)
+"""

@@ -1,0 +1,195 @@
+"""Scene to film: what light comes from where each film pixel looks, and how far away that is."""
+
+import math
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pinsim.render.plan import RenderPlan
+from pinsim.render.resample import Block, fold, make_blocks
+from pinsim.scene import DistanceMap, Scene
+
+Float = NDArray[np.float32]
+
+_THREADS = 2
+_STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class FilmView:
+    """The scene on the film's own grid, with its margins.
+
+    light : (rows, columns, 3), linear; first radiance, after `illuminate` irradiance.
+    inverse_distance : (rows, columns), 1/mm, or None when the whole scene has one distance.
+    covered : (rows, columns) of the frame, True where the photo shows what the film sees.
+    compensate : the light was dimmed by resample.response, to be given back while spreading.
+    """
+
+    plan: RenderPlan
+    light: Float
+    inverse_distance: Float | None
+    covered: NDArray[np.bool_]
+    compensate: bool
+
+    @property
+    def covered_share(self) -> float:
+        """How much of the frame the photo covers, 0 to 1."""
+        return float(self.covered.mean())
+
+
+def project(scene: Scene, plan: RenderPlan) -> FilmView:
+    """Lay the scene on the film grid, upright as the scene is seen."""
+    if scene.projection == "equirectangular":
+        return _project_panorama(scene, plan)
+    return _project_rectilinear(scene, plan)
+
+
+def _project_rectilinear(scene: Scene, plan: RenderPlan) -> FilmView:
+    # Film and photo are both planes in front of one centre: film coordinates are photo coordinates
+    # times one number, so rows and columns are resampled apart.
+    rows, columns = scene.photo.shape
+    scale = scene.focal_length_px / plan.camera.focal_length_mm
+    column = 0.5 * (columns - 1) + plan.right_mm() * scale
+    row = 0.5 * (rows - 1) - plan.up_mm() * scale
+    step = plan.pitch_mm * scale
+    down = make_blocks(row, rows, step=step, beyond=scene.beyond)
+    across = make_blocks(column, columns, step=step, beyond=scene.beyond)
+    planes = np.empty((3, *plan.padded), np.float32)
+    needed = slice(min(b.take.start for b in across), max(b.take.stop for b in across))
+
+    def lay(block: Block) -> None:
+        _lay_rows(scene, block, across, needed, planes)
+
+    with ThreadPoolExecutor(_THREADS) as pool:
+        for _ in pool.map(lay, down):
+            pass
+    inside = plan.inside
+    seen_rows = (row[inside[0]] >= -0.5) & (row[inside[0]] <= rows - 0.5)
+    seen_columns = (column[inside[1]] >= -0.5) & (column[inside[1]] <= columns - 0.5)
+    return FilmView(
+        plan=plan,
+        light=np.moveaxis(planes, 0, -1),
+        inverse_distance=_distances(scene, np.rint(row)[:, None], np.rint(column)[None, :]),
+        covered=seen_rows[:, None] & seen_columns[None, :],
+        compensate=step >= 1.0,
+    )
+
+
+def _lay_rows(
+    scene: Scene, block: Block, across: list[Block], needed: slice, planes: Float
+) -> None:
+    """Resample one group of film rows: down the photo first, as that leaves least to do."""
+    height = block.to.stop - block.to.start
+    width = needed.stop - needed.start
+    tall = np.empty((height, width, 3), np.float32)
+    for start in range(needed.start, needed.stop, _STRIP):
+        columns = slice(start, min(start + _STRIP, needed.stop))
+        light = scene.photo.linear(block.take, columns)
+        strip = block.weights @ light.reshape(light.shape[0], -1)
+        tall[:, columns.start - needed.start : columns.stop - needed.start] = strip.reshape(
+            height, -1, 3
+        )
+    flat = np.ascontiguousarray(np.moveaxis(tall, -1, 0)).reshape(3 * height, width)
+    for part in across:
+        take = slice(part.take.start - needed.start, part.take.stop - needed.start)
+        planes[:, block.to, part.to] = (flat[:, take] @ part.weights.T).reshape(3, height, -1)
+
+
+def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float64]) -> Float | None:
+    """Return 1/distance at the nearest photo pixel; edges between near and far stay edges."""
+    if not isinstance(scene.distance, DistanceMap):
+        return None
+    # Distance always goes on beyond the photo's edge: "black" is about light only.
+    beyond = "extend" if scene.beyond == "extend" else "mirror"
+    rows, columns = scene.photo.shape
+    return scene.distance.inverse_mm(
+        fold(row.astype(np.intp), rows, beyond), fold(column.astype(np.intp), columns, beyond)
+    )
+
+
+def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
+    """Lay an equirectangular picture on the film: longitude across, latitude down."""
+    from scipy.ndimage import map_coordinates
+
+    rows, columns = scene.photo.shape
+    per_rad = scene.focal_length_px
+    z = plan.camera.focal_length_mm
+    around = scene.horizontal_view_deg >= 359.99
+    # A panorama bends, so it is read point by point on a grid twice as fine, from a photo averaged
+    # down to that grid where it is finer still, and then brought to the film's grid like any photo.
+    fine = plan.pitch_mm / 2.0
+    shrink = max(1, math.floor(per_rad * fine / z))
+    small = _averaged(scene, shrink)
+    right = np.repeat(plan.right_mm(), 2) + np.tile([-0.5, 0.5], plan.padded[1]) * fine
+    up = np.repeat(plan.up_mm(), 2) + np.tile([0.5, -0.5], plan.padded[0]) * fine
+    column, row = _panorama_place(right, up, z, per_rad, rows, columns)
+    place = [(row + 0.5) / shrink - 0.5, (column + 0.5) / shrink - 0.5]
+    mode = (
+        "grid-wrap"
+        if around
+        else {"mirror": "reflect", "extend": "nearest", "black": "grid-constant"}[scene.beyond]
+    )
+
+    def read(channel: int) -> Float:
+        return np.asarray(
+            map_coordinates(small[..., channel], place, np.float32, order=3, mode=mode), np.float32
+        )
+
+    down = make_blocks(
+        np.arange(plan.padded[0]) * 2 + 0.5, 2 * plan.padded[0], step=2.0, beyond="mirror"
+    )
+    across = make_blocks(
+        np.arange(plan.padded[1]) * 2 + 0.5, 2 * plan.padded[1], step=2.0, beyond="mirror"
+    )
+    planes = np.empty((3, *plan.padded), np.float32)
+    with ThreadPoolExecutor(_THREADS) as pool:
+        for channel, dense in enumerate(pool.map(read, range(3))):
+            tall = np.empty((plan.padded[0], dense.shape[1]), np.float32)
+            for block in down:
+                tall[block.to] = block.weights @ dense[block.take]
+            for block in across:
+                planes[channel, :, block.to] = tall[:, block.take] @ block.weights.T
+    column, row = _panorama_place(plan.right_mm(), plan.up_mm(), z, per_rad, rows, columns)
+    inside = plan.inside
+    seen = (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows) & (
+        around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns)
+    )
+    return FilmView(
+        plan=plan,
+        light=np.moveaxis(np.maximum(planes, 0.0, out=planes), 0, -1),
+        inverse_distance=_distances(scene, np.rint(row), np.rint(column)),
+        covered=seen,
+        compensate=True,
+    )
+
+
+def _panorama_place(
+    right_mm: NDArray[np.float64],
+    up_mm: NDArray[np.float64],
+    z: float,
+    per_rad: float,
+    rows: int,
+    columns: int,
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return the panorama's columns and rows that film points look at."""
+    longitude = np.arctan2(right_mm, z)[None, :]
+    latitude = np.arctan2(up_mm[:, None], np.hypot(right_mm, z)[None, :])
+    column = np.broadcast_to(0.5 * (columns - 1) + per_rad * longitude, latitude.shape)
+    return column, 0.5 * (rows - 1) - per_rad * latitude
+
+
+def _averaged(scene: Scene, shrink: int) -> Float:
+    """Return the photo's light averaged over squares of `shrink` pixels; odd rests are dropped."""
+    rows, columns = scene.photo.shape
+    if shrink == 1:
+        return scene.photo.linear()
+    out_rows, out_columns = rows // shrink, columns // shrink
+    small = np.empty((out_rows, out_columns, 3), np.float32)
+    for r in range(out_rows):
+        light = scene.photo.linear(
+            slice(r * shrink, (r + 1) * shrink), slice(0, out_columns * shrink)
+        )
+        small[r] = light.reshape(shrink, out_columns, shrink, 3).mean(axis=(0, 2))
+    return small

@@ -1,0 +1,139 @@
+"""Band-limited resampling along one axis, as a few dense blocks of a banded matrix.
+
+A film pixel takes light from some tens of photo pixels. Written as small dense matrices, one for
+each group of neighbouring film pixels, the work is done by BLAS, with a kernel long enough that its
+response is known and flat: what little it dims is given back exactly by `response`.
+"""
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+Float = NDArray[np.float32]
+
+# Half the length of the kernel in periods of the coarser grid, and its Kaiser parameter: the
+# response is 1 within 1e-3 up to 3/4 of the coarser grid's Nyquist, 1/2 at it, below 1e-3 at 5/4.
+HALF_PERIODS = 6.0
+KAISER_BETA = 5.0
+_GROUP = 32
+
+
+def _kernel(distance: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return the windowed sinc at distances in periods of the coarser grid."""
+    inside = np.maximum(1.0 - (distance / HALF_PERIODS) ** 2, 0.0)
+    window = np.i0(KAISER_BETA * np.sqrt(inside)) / np.i0(KAISER_BETA)
+    return np.where(np.abs(distance) < HALF_PERIODS, np.sinc(distance) * window, 0.0)
+
+
+def response(frequency: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return what the kernel leaves of a wave. frequency : any shape, cycles per coarse pixel."""
+    fine = np.linspace(-HALF_PERIODS, HALF_PERIODS, 769)
+    weights = _kernel(fine)
+    weights /= weights.sum()
+    flat = np.cos(2.0 * np.pi * np.outer(frequency.ravel(), fine)) @ weights
+    return np.asarray(flat.reshape(frequency.shape))
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Block:
+    """A group of film pixels `to`, the photo pixels `take` they need, and the weights between.
+
+    weights : float32 (film pixels, photo pixels).
+    """
+
+    to: slice
+    take: slice
+    weights: Float
+
+
+def fold(index: NDArray[np.intp], size: int, beyond: str) -> NDArray[np.intp]:
+    """Return where the photo is read for whole positions that may lie beyond it."""
+    if beyond == "mirror":
+        index = np.mod(index, 2 * size)
+        return np.where(index < size, index, 2 * size - 1 - index)
+    return np.clip(index, 0, size - 1)
+
+
+def make_blocks(
+    position: NDArray[np.floating[Any]], size: int, *, step: float, beyond: str
+) -> list[Block]:
+    """Return the blocks that resample an axis of `size` photo pixels.
+
+    position : (n,) where each film pixel's middle lies, in photo pixels, 0 = middle of the first.
+    step : photo pixels per film pixel; below 1 the photo is the coarser grid.
+    beyond : "mirror", "extend" or "black", for positions outside the photo.
+    """
+    period = max(1.0, step)
+    reach = HALF_PERIODS * period
+    taps = int(np.ceil(2.0 * reach)) + 1
+    blocks = []
+    for start in range(0, position.size, _GROUP):
+        middle = position[start : start + _GROUP]
+        first = np.ceil(middle - reach).astype(np.intp)
+        index = first[:, None] + np.arange(taps)
+        weight = _kernel((index - middle[:, None]) / period)
+        # Normalised row by row, so that a plain wall stays plain to the last bit.
+        weight /= weight.sum(axis=1, keepdims=True)
+        if beyond == "black":
+            weight *= (index >= 0) & (index < size)
+        source = fold(index, size, beyond)
+        low, high = int(source.min()), int(source.max()) + 1
+        dense = np.zeros((middle.size, high - low))
+        rows = np.broadcast_to(np.arange(middle.size)[:, None], source.shape)
+        np.add.at(dense, (rows, source - low), weight)
+        blocks.append(
+            Block(slice(start, start + middle.size), slice(low, high), dense.astype(np.float32))
+        )
+    return blocks
+
+
+@dataclass(frozen=True, slots=True)
+class Part:
+    """A rectangle of a picture in pixels, edges not necessarily between pixels."""
+
+    top: float
+    left: float
+    height: float
+    width: float
+
+
+def whole(picture: Float) -> Part:
+    """Return the part that is all of a picture."""
+    return Part(0.0, 0.0, float(picture.shape[0]), float(picture.shape[1]))
+
+
+def resample_part(picture: Float, part: Part, shape: tuple[int, int]) -> Float:
+    """Return a part of a picture of linear light at another size, band-limited either way.
+
+    picture : (rows, columns, channels), NaN where nothing was recorded; shape : rows and columns
+    wanted. Returns float32; NaN where the nearest pixel has none.
+    """
+    hidden = np.isnan(picture[..., 0])
+    seen = np.where(hidden[..., None], np.float32(0.0), picture)
+    row = part.top - 0.5 + (np.arange(shape[0]) + 0.5) * part.height / shape[0]
+    column = part.left - 0.5 + (np.arange(shape[1]) + 0.5) * part.width / shape[1]
+    down = make_blocks(row, picture.shape[0], step=part.height / shape[0], beyond="mirror")
+    across = make_blocks(column, picture.shape[1], step=part.width / shape[1], beyond="mirror")
+    result: Float = _through(_through(seen, down).swapaxes(0, 1), across).swapaxes(0, 1)
+    if hidden.any():
+        # What is hidden counts as nothing, not as black: divide by the share that was seen.
+        share = _through(
+            _through((~hidden).astype(np.float32)[..., None], down).swapaxes(0, 1), across
+        )
+        result = np.asarray(result / np.maximum(share.swapaxes(0, 1), 0.25), np.float32)
+        nearest_row = np.clip(np.rint(row), 0, picture.shape[0] - 1).astype(np.intp)
+        nearest_column = np.clip(np.rint(column), 0, picture.shape[1] - 1).astype(np.intp)
+        result[hidden[np.ix_(nearest_row, nearest_column)]] = np.nan
+    return np.ascontiguousarray(np.maximum(result, 0.0, where=~np.isnan(result), out=result))
+
+
+def _through(picture: Float, blocks: list[Block]) -> Float:
+    """Resample the first axis of (n, m, channels)."""
+    count = blocks[-1].to.stop
+    flat = np.ascontiguousarray(picture).reshape(picture.shape[0], -1)
+    result = np.empty((count, flat.shape[1]), np.float32)
+    for block in blocks:
+        result[block.to] = block.weights @ flat[block.take]
+    return result.reshape(count, *picture.shape[1:])

@@ -1,0 +1,343 @@
+"""The photo door: orientation, colour profile, bit depth and gamma are settled here and nowhere else.
+
+Pillow reads what has 8 bits; 16-bit PNG goes through imagecodecs and deep or float TIFF through
+tifffile, because Pillow hands 16-bit colour over as 8-bit without a word.
+"""
+
+import os
+import warnings
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from PIL import Image, UnidentifiedImageError
+
+from pinsim.colour import srgb_table
+from pinsim.errors import SceneError
+from pinsim.scene.exif_view import focal_length_px, horizontal_view_deg
+from pinsim.scene.photo import Photo, sound_light
+
+_ORIENTATION = 0x0112
+_EXIF_DIRECTORY = 0x8769
+_BITS_PER_SAMPLE = 258
+MAX_PIXELS = 2 * 89_478_485  # Pillow's own limit for a file that is probably an attack
+
+# What to do to stored rows and columns so that they stand upright (Exif 2.32, tag Orientation).
+_UPRIGHT = {
+    2: lambda a: a[:, ::-1],
+    3: lambda a: a[::-1, ::-1],
+    4: lambda a: a[::-1],
+    5: lambda a: a.swapaxes(0, 1),
+    6: lambda a: a[::-1].swapaxes(0, 1),
+    7: lambda a: a[::-1, ::-1].swapaxes(0, 1),
+    8: lambda a: a[:, ::-1].swapaxes(0, 1),
+}
+
+
+def read_photo(path: Path) -> Photo:
+    """Read a photo upright, ready to give linear light.
+
+    Raises SceneError, in one line, for a missing, empty, truncated, oversized or foreign file.
+    """
+    _require_file(path, "photo")
+    if _is_float_or_deep_tiff(path):
+        return _from_tiff(path)
+    with _opened(path, "photo") as image:
+        tags = image.getexif()
+        orientation = tags.get(_ORIENTATION, 1)
+        focal_px = focal_length_px(tags.get_ifd(_EXIF_DIRECTORY), image.width, image.height)
+        profile = image.info.get("icc_profile")
+        if _is_16bit_png(path):
+            import imagecodecs
+
+            codes = imagecodecs.png_decode(path.read_bytes())
+            channels = {1: "L", 2: "LA", 3: "RGB", 4: "RGBA"}
+            mode = channels[1 if codes.ndim == 2 else codes.shape[2]]
+        else:
+            codes, mode = _eight_bit(image, bool(profile))
+    return _photo(codes, mode, orientation, profile, focal_px, path)
+
+
+def read_plain(path: Path, kind: str) -> NDArray[Any]:
+    """Read the bare numbers of a one-channel picture (a map): no gamma, no profile, upright.
+
+    Returns (rows, columns), uint8, uint16 or float32.
+    """
+    _require_file(path, kind)
+    orientation = 1
+    if _is_float_or_deep_tiff(path):
+        codes, _, orientation = _read_tiff(path, kind)
+    elif _is_16bit_png(path):
+        import imagecodecs
+
+        with _opened(path, kind) as image:
+            orientation = image.getexif().get(_ORIENTATION, 1)
+            codes = imagecodecs.png_decode(path.read_bytes())
+    else:
+        with _opened(path, kind) as image:
+            orientation = image.getexif().get(_ORIENTATION, 1)
+            codes = np.asarray(image)
+    if codes.ndim == 3 and np.array_equal(codes[..., :1].repeat(codes.shape[2], 2), codes):
+        codes = codes[..., 0]
+    if codes.ndim != 2:
+        raise SceneError(
+            f"{path}: this {kind} has {codes.shape[-1]} different channels; it must have one "
+            "(grey), whose values are distances."
+        )
+    return _upright(codes, orientation)
+
+
+def _require_file(path: Path, kind: str) -> None:
+    if not path.exists():
+        raise SceneError(f"{path}: no such file; give the path of a {kind}.")
+    if path.is_dir():
+        raise SceneError(f"{path} is a folder; give one {kind} in it.")
+    if path.stat().st_size == 0:
+        raise SceneError(f"{path} is empty (0 bytes); copy the {kind} again.")
+    if not os.access(path, os.R_OK):
+        raise SceneError(f"{path} cannot be read; check its permissions.")
+
+
+@contextmanager
+def _opened(path: Path, kind: str) -> Iterator[Image.Image]:
+    """Open a picture with Pillow; everything its decoders throw becomes one line of ours."""
+    try:
+        with warnings.catch_warnings():
+            # Pillow warns at half its limit and complains of odd Exif; neither is the user's to mend.
+            warnings.simplefilter("ignore")
+            with Image.open(path) as image:
+                yield image
+    except SceneError:
+        raise
+    except UnidentifiedImageError:
+        raise SceneError(_foreign(path, kind)) from None
+    except Image.DecompressionBombError as problem:
+        size = next(
+            (word for word in str(problem).strip("(").split() if word.strip("(").isdigit()), ""
+        )
+        count = size.strip("(")
+        raise SceneError(
+            f"{path}: {int(count) / 1e6:.0f} megapixels is more than the {MAX_PIXELS / 1e6:.0f} that "
+            f"pinsim opens; shrink the {kind} first (6000 px wide is ample)."
+            if count
+            else f"{path} has more than {MAX_PIXELS / 1e6:.0f} megapixels; shrink the {kind} first."
+        ) from None
+    except MemoryError:
+        raise SceneError(
+            f"{path} needs more memory than there is; shrink the {kind} first."
+        ) from None
+    except (
+        Exception
+    ) as problem:  # decoders raise OSError, SyntaxError, ValueError, struct.error ...
+        reason = " ".join(str(problem).split()) or type(problem).__name__
+        raise SceneError(
+            f"{path} is damaged or cut short ({ascii(reason)[1:-1]}); copy or export the {kind} again."
+        ) from None
+
+
+def _foreign(path: Path, kind: str) -> str:
+    with path.open("rb") as file:
+        head = file.read(16)
+    if head[4:8] == b"ftyp" and head[8:12] in {b"heic", b"heix", b"mif1", b"heim", b"hevc"}:
+        return f"{path} is a HEIC picture, which pinsim does not read; export it as JPEG first."
+    return (
+        f"{path} is not a picture that pinsim reads; export the {kind} as JPEG, PNG or TIFF "
+        "(camera raw files need developing first)."
+    )
+
+
+def _is_16bit_png(path: Path) -> bool:
+    with path.open("rb") as file:
+        head = file.read(26)
+    # Pillow hands 16-bit RGB over as 8-bit without a word, so the depth is read from the header.
+    return head[:8] == b"\x89PNG\r\n\x1a\n" and len(head) > 24 and head[24] == 16
+
+
+def _is_float_or_deep_tiff(path: Path) -> bool:
+    with path.open("rb") as file:
+        head = file.read(4)
+    if head not in {b"II*\0", b"MM\0*", b"II+\0", b"MM\0+"}:
+        return False
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            with Image.open(path) as image:
+                bits = image.tag_v2.get(_BITS_PER_SAMPLE, (8,))  # type: ignore[attr-defined]
+                return bool(max(bits) > 8)
+    except Exception:  # a TIFF that Pillow cannot even describe: deep, tiled or planar
+        return True
+
+
+def _read_tiff(path: Path, kind: str) -> tuple[NDArray[Any], bytes | None, int]:
+    """Return codes, colour profile and orientation of a 16-bit or float TIFF's first page."""
+    import logging
+
+    import tifffile
+
+    logging.getLogger("tifffile").setLevel(logging.CRITICAL)
+    try:
+        with tifffile.TiffFile(path) as tiff:
+            page = tiff.pages[0].aspage()
+            if page.imagelength * page.imagewidth > MAX_PIXELS:
+                raise SceneError(
+                    f"{path}: {page.imagelength * page.imagewidth / 1e6:.0f} megapixels is more than "
+                    f"the {MAX_PIXELS / 1e6:.0f} that pinsim opens; shrink the {kind} first."
+                )
+            codes = page.asarray()
+            if page.axes.startswith("S"):  # planes one after the other
+                codes = np.moveaxis(codes, 0, -1)
+            profile = page.tags.valueof("InterColorProfile")
+            orientation = int(page.tags.valueof("Orientation") or 1)
+    except SceneError:
+        raise
+    except Exception as problem:
+        reason = " ".join(str(problem).split()) or type(problem).__name__
+        raise SceneError(
+            f"{path} is damaged or of a kind of TIFF that pinsim does not read "
+            f"({ascii(reason)[1:-1]}); export the {kind} again, without layers."
+        ) from None
+    return codes, profile, orientation
+
+
+def _from_tiff(path: Path) -> Photo:
+    codes, profile, orientation = _read_tiff(path, "photo")
+    mode = {1: "L", 2: "LA", 3: "RGB", 4: "RGBA"}.get(1 if codes.ndim == 2 else codes.shape[-1])
+    if mode is None or codes.ndim not in (2, 3):
+        raise SceneError(f"{path} has shape {codes.shape}; a photo has 1 to 4 channels.")
+    if np.issubdtype(codes.dtype, np.floating):
+        # Float files are linear light by common practice of renderers and raw converters.
+        profile = None
+        codes = codes.astype(np.float32)
+    elif codes.dtype != np.uint16:
+        raise SceneError(
+            f"{path} holds numbers of type {codes.dtype}; export it with 8 or 16 bits or as float."
+        )
+    focal_px = None
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            with Image.open(path) as image:
+                tags = image.getexif().get_ifd(_EXIF_DIRECTORY)
+                focal_px = focal_length_px(tags, image.width, image.height)
+    except Exception:  # the pixels are read; only the angle of view stays unknown
+        focal_px = None
+    return _photo(codes, mode, orientation, profile, focal_px, path)
+
+
+def _eight_bit(image: Image.Image, profiled: bool) -> tuple[NDArray[Any], str]:
+    """Return 8-bit codes and their mode, one of L, LA, RGB, RGBA, CMYK; 16-bit grey as it is."""
+    if image.mode.startswith("I"):
+        return np.asarray(image).astype(np.uint16), "L"
+    if image.mode == "F":
+        return np.asarray(image, np.float32), "L"
+    if image.mode == "1":
+        image = image.convert("L")
+    elif image.mode in {"P", "PA"} or (image.mode != "RGBA" and "transparency" in image.info):
+        image = image.convert("RGBA" if image.has_transparency_data else "RGB")
+    elif image.mode == "CMYK" and not profiled:
+        # Without its profile CMYK has no defined colour; Pillow's plain rule is what viewers show.
+        image = image.convert("RGB")
+    elif image.mode not in {"L", "LA", "RGB", "RGBA", "CMYK"}:
+        image = image.convert("RGB")
+    mode = image.mode
+    return np.asarray(image), mode
+
+
+def _photo(
+    codes: NDArray[Any],
+    mode: str,
+    orientation: int,
+    profile: bytes | None,
+    focal_px: float | None,
+    path: Path,
+) -> Photo:
+    notes: list[str] = []
+    codes = _upright(codes, orientation)
+    alpha = None
+    if mode in {"LA", "RGBA"}:
+        alpha = codes[..., -1]
+        codes = codes[..., :-1]
+    elif codes.ndim == 2:
+        codes = codes[..., None]
+    decode: NDArray[np.float32] | None
+    if np.issubdtype(codes.dtype, np.floating):
+        decode = None
+    else:
+        decode = srgb_table(8 if codes.dtype == np.uint8 else 16)
+        if profile and not _is_srgb(profile):
+            linear_codes = _through_profile(codes, profile, mode, path)
+            if linear_codes is None:
+                notes.append("its colour profile cannot be used; read as sRGB")
+            else:
+                codes = linear_codes
+                decode = np.linspace(0.0, 1.0, 65536, dtype=np.float32)
+    if codes.shape[2] == 4:  # CMYK whose profile failed: the plain rule
+        ink = codes.astype(np.float32) / 255.0
+        codes = np.round(255.0 * (1.0 - ink[..., :3]) * (1.0 - ink[..., 3:])).astype(np.uint8)
+    if codes.shape[2] == 1:
+        codes = np.repeat(codes, 3, axis=2)
+    if alpha is not None and not _opaque(alpha):
+        light = codes.astype(np.float32) if decode is None else np.take(decode, codes)
+        top = 1.0 if decode is None else float(np.iinfo(alpha.dtype).max)
+        clear = (alpha.astype(np.float32) / np.float32(top))[..., None]
+        codes, decode = light * clear + (1.0 - clear), None
+        notes.append("transparent parts are taken as white paper")
+    if decode is None:
+        codes = sound_light(codes.astype(np.float32, copy=False), str(path))
+    codes = np.ascontiguousarray(codes)
+    codes.flags.writeable = False
+    view = horizontal_view_deg(focal_px, codes.shape[1]) if focal_px else None
+    return Photo(codes=codes, decode=decode, view_deg=view, notes=tuple(notes))
+
+
+def _opaque(alpha: NDArray[Any]) -> bool:
+    top = 1.0 if np.issubdtype(alpha.dtype, np.floating) else np.iinfo(alpha.dtype).max
+    return bool((alpha >= top).all())
+
+
+def _upright(codes: NDArray[Any], orientation: Any) -> NDArray[Any]:
+    turn = _UPRIGHT.get(orientation)  # 0 and 9 occur in the wild and mean nothing
+    return codes if turn is None else np.asarray(turn(codes))
+
+
+def _is_srgb(profile: bytes) -> bool:
+    import io
+
+    from PIL import ImageCms
+
+    try:
+        text = ImageCms.getProfileDescription(ImageCms.ImageCmsProfile(io.BytesIO(profile)))
+    except (ImageCms.PyCMSError, OSError):
+        return False
+    return "srgb" in text.lower()
+
+
+def _through_profile(
+    codes: NDArray[Any], profile: bytes, mode: str, path: Path
+) -> NDArray[np.uint16] | None:
+    """Return linear sRGB light in 16-bit codes, or None when the profile does not fit the picture."""
+    import imagecodecs
+
+    linear = imagecodecs.cms_profile(
+        "rgb",
+        whitepoint=[0.3127, 0.3290, 1.0],
+        primaries=[0.64, 0.33, 1.0, 0.30, 0.60, 1.0, 0.15, 0.06, 1.0],
+        gamma=1.0,
+    )
+    space = {"L": "gray", "LA": "gray", "RGB": "rgb", "RGBA": "rgb", "CMYK": "cmyk"}[mode]
+    try:
+        light = imagecodecs.cms_transform(
+            np.ascontiguousarray(codes if space != "gray" else codes[..., 0]),
+            profile,
+            linear,
+            colorspace=space,
+            outcolorspace="rgb",
+            outdtype="uint16",
+            intent=imagecodecs.CMS.INTENT.RELATIVE_COLORIMETRIC,
+        )
+    except Exception:  # a profile for another colour model, or a broken one
+        return None
+    return np.asarray(light, np.uint16)

@@ -1,0 +1,1 @@
+"""Outside references for the tests; nothing in this folder imports pinsim."""
