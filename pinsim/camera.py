@@ -238,6 +238,7 @@ def _film(table: Table) -> tuple[Film, str]:
             if table.has("width") or table.has("height"):
                 raise DesignError("frame and width or height exclude each other; keep one of them.")
         else:
+            table.refuse_slip("frame")
             width = length_mm(
                 table.need("width", '"56 mm"  (or frame = "6x6")'), table.place("width")
             )

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from pinsim.errors import OutputError
 
 PICTURE_SUFFIXES = (".png", ".jpg", ".jpeg", ".tif", ".tiff")
+BITS = ("8", "16", "float")
 _INCH_MM = 25.4
 
 
@@ -25,19 +26,51 @@ def check_target(
             f"{path}: cannot tell the kind of file from {path.suffix or 'no ending'!r}; "
             f"use one of {', '.join(suffixes)}."
         )
+    try:
+        path.stat()
+    except (FileNotFoundError, NotADirectoryError):
+        pass
+    except OSError as problem:  # a name too long, a folder that must not be entered
+        raise OutputError(f"{path} cannot be written: {problem.strerror}.") from None
     if path.is_dir():
         raise OutputError(f"{path} is a folder; give a file name in it.")
     if not path.parent.is_dir():
         raise OutputError(f"{path}: the folder {path.parent} does not exist; make it first.")
     if not os.access(path.parent, os.W_OK):
         raise OutputError(f"{path}: the folder {path.parent} cannot be written to.")
-    for source in inputs:
-        if path.exists() and source.exists() and os.path.samefile(path, source):
-            raise OutputError(f"{path} is what the picture is made from; give another name.")
+    keep_inputs(path, inputs)
     if path.exists() and not overwrite:
         raise OutputError(
             f"{path} exists already; give another name, or allow it with --overwrite."
         )
+
+
+def keep_inputs(path: Path, inputs: Sequence[Path]) -> None:
+    """Refuse a target that is one of the files that the picture is made from."""
+    for source in inputs:
+        try:
+            same = os.path.samefile(path, source)
+        except OSError:  # one of them is not there
+            continue
+        if same:
+            raise OutputError(f"{path} is what the picture is made from; give another name.")
+
+
+def check_bits(suffix: str, bits: str | None) -> None:
+    """Refuse a depth that a kind of file cannot hold. bits : one of BITS, or None for the usual one."""
+    if bits is None:
+        return
+    if bits not in BITS:
+        raise OutputError(f"bits is {bits!r}; it must be one of: {', '.join(BITS)}.")
+    if suffix in {".tif", ".tiff"}:
+        return
+    if suffix == ".npz":
+        if bits != "float":
+            raise OutputError("a .npz file holds the exposure as float; leave the bits out.")
+    elif bits == "float":
+        raise OutputError(f"a {suffix} file holds no float; use .tif or .npz.")
+    elif bits == "16":
+        raise OutputError(f"a {suffix} file is written with 8 bits; for 16 use .tif.")
 
 
 def write_whole(path: Path, write: Callable[[BinaryIO], None], *, overwrite: bool) -> None:
@@ -46,7 +79,7 @@ def write_whole(path: Path, write: Callable[[BinaryIO], None], *, overwrite: boo
     Raises OutputError when the target exists and must not be replaced, or the disk refuses.
     """
     try:
-        handle, name = tempfile.mkstemp(prefix=f".{path.stem}-", suffix=".part", dir=path.parent)
+        handle, name = tempfile.mkstemp(prefix=".pinsim-", suffix=".part", dir=path.parent)
     except OSError as problem:
         raise OutputError(f"{path} cannot be written: {problem.strerror}.") from None
     part = Path(name)
@@ -140,6 +173,8 @@ def write_tiff(file: BinaryIO, data: NDArray[Any], *, dpi: float, description: s
     extra: dict[str, Any] = {}
     if coloured and data.dtype != np.float32:
         extra["iccprofile"] = srgb_profile()
+    # A tag of a TIFF holds ASCII only; names of places may hold anything.
+    description = description.encode("ascii", "backslashreplace").decode()
     iio.imwrite(
         file,
         data,

@@ -1,5 +1,6 @@
 """Reading TOML tables strictly: every key is asked for by name, and what is left over is an error."""
 
+import difflib
 import tomllib
 from collections.abc import Collection
 from pathlib import Path
@@ -7,15 +8,20 @@ from typing import Any
 
 from pinsim.errors import PinsimError, nearest
 
+# How alike two keys must be to take one for the other misspelt: diametr and diameter are 0.93 alike,
+# tone and hole, both right, 0.5.
+_SLIP = 0.7
+
 
 def read_toml(path: Path, error: type[PinsimError], kind: str) -> dict[str, Any]:
     """Read a TOML file; raise `error`, in one line, when it is missing, empty or not TOML."""
-    if not path.exists():
-        raise error(f"{path}: no such file; give the path of a {kind}.")
-    if path.is_dir():
-        raise error(f"{path} is a folder; give the {kind} inside it.")
     try:
-        text = path.read_bytes().decode("utf-8")
+        # Some editors put a byte order mark before the text; "-sig" drops it.
+        text = path.read_bytes().decode("utf-8-sig")
+    except (FileNotFoundError, NotADirectoryError):
+        raise error(f"{path}: no such file; give the path of a {kind}.") from None
+    except IsADirectoryError:
+        raise error(f"{path} is a folder; give the {kind} inside it.") from None
     except UnicodeDecodeError:
         raise error(f"{path} is not text in UTF-8; a {kind} is a TOML file.") from None
     except OSError as problem:
@@ -24,7 +30,7 @@ def read_toml(path: Path, error: type[PinsimError], kind: str) -> dict[str, Any]
         raise error(f"{path} is empty; a {kind} is a TOML file, see docs/files.md.")
     try:
         return tomllib.loads(text)
-    except tomllib.TOMLDecodeError as problem:
+    except (ValueError, RecursionError) as problem:  # also numbers and nesting without end
         raise error(
             f"{path} is not valid TOML: {problem}. Text values stand in quotation marks."
         ) from None
@@ -35,7 +41,10 @@ class Table:
 
     def __init__(self, values: Any, where: str, error: type[PinsimError]) -> None:
         if not isinstance(values, dict):
-            raise error(f"{where} is {values!r}; it must be a table, see docs/files.md.")
+            raise error(
+                f"{where} is {values!r}; it must be a table: its name in brackets on a line of its "
+                "own, its keys below."
+            )
         self.where = where
         self.error = error
         self._left = dict(values)
@@ -55,7 +64,7 @@ class Table:
         """Take a value out; a missing one is an error that shows how it would be written."""
         if not self.has(key):
             # A slip of spelling is likelier than a forgotten line, so name it first.
-            self.refuse_leftovers(also=[key], only_near=key)
+            self.refuse_slip(key)
             raise self.error(f"{self.place(key)} is missing; write for example: {key} = {example}")
         return self.take(key)
 
@@ -74,19 +83,25 @@ class Table:
 
     def table(self, key: str) -> "Table":
         """Take a table out; a missing one is empty."""
+        if not self.has(key):
+            self.refuse_slip(key)
         return Table(self.take(key, {}), f"{self.where} [{key}]", self.error)
 
     def place(self, key: str) -> str:
         """Return where a key stands, for error texts."""
         return f"{self.where}: {key}"
 
-    def refuse_leftovers(self, also: Collection[str] = (), only_near: str | None = None) -> None:
+    def refuse_slip(self, missing: str) -> None:
+        """Raise when a key nobody asked for looks like the missing one misspelt."""
+        for key in sorted(self._left.keys() - self._asked):
+            if difflib.SequenceMatcher(None, key, missing).ratio() >= _SLIP:
+                raise self.error(f"{self.where}: unknown key {key!r}. Did you mean {missing!r}?")
+
+    def refuse_leftovers(self) -> None:
         """Raise for a key nobody asked for, naming the nearest that is known here."""
-        known = sorted(self._asked | set(also))
-        for key in sorted(self._left.keys() - set(known)):
-            hint = nearest(key, [only_near] if only_near else known)
-            if only_near and not hint:
-                continue
+        known = sorted(self._asked)
+        for key in sorted(self._left.keys() - self._asked):
             raise self.error(
-                f"{self.where}: unknown key {key!r}.{hint} Known here: {', '.join(known)}."
+                f"{self.where}: unknown key {key!r}.{nearest(key, known)} "
+                f"Known here: {', '.join(known)}."
             )

@@ -22,6 +22,9 @@ NM_PER = {"nm": 1.0, "um": 1000.0}
 DEG_PER = {"deg": 1.0, "rad": 180.0 / math.pi}
 S_PER = {"ms": 1e-3, "s": 1.0, "min": 60.0, "h": 3600.0}
 
+LONGEST_S = 3.6e8  # eleven years; the longest exposures through a hole have taken about one
+EV_RANGE = (-10.0, 25.0)  # at ISO 100, from starlight to brighter than any lit scene
+
 # Both Unicode micro signs, the typographic primes and the degree sign are what keyboards,
 # phones and word processors really produce.
 _SPELLINGS = {
@@ -55,6 +58,11 @@ _QUANTITY = re.compile(
 
 def _parse(text: object, where: str, units: Mapping[str, float], example: str) -> float:
     allowed = ", ".join(units)
+    if isinstance(text, bool) or not isinstance(text, str | int | float):
+        raise UnitError(
+            f"{where} is {text!a}; write it as one text with a number and a unit, "
+            f"for example {example!r}."
+        )
     if not isinstance(text, str):
         raise UnitError(
             f"{where} is {text!r}, a number without a unit; "
@@ -119,9 +127,33 @@ def angle_deg(text: object, where: str) -> float:
 def time_s(text: object, where: str) -> float:
     """Return a time such as "8 s", "1/4 s" or "3 min" in seconds."""
     value = _parse(text, where, S_PER, "8 s")
+    if value > LONGEST_S:
+        raise UnitError(
+            f"{where} is {value:g} s, more than {LONGEST_S / 3600.0:.0f} h; "
+            "an exposure of that length is not drawn, give a shorter one."
+        )
     if value <= 0.0:
         raise UnitError(
             f"{where} is {value:g} s; an exposure takes more than 0 s, for example 8 s."
+        )
+    return value
+
+
+def exposure_value(text: object, where: str) -> float:
+    """Return a brightness in EV at ISO 100, which has no unit: "13", "-2.5" or a number."""
+    low, high = EV_RANGE
+    try:
+        if isinstance(text, bool) or not isinstance(text, str | int | float):
+            raise ValueError
+        value = float(text)
+    except ValueError:
+        raise UnitError(
+            f"{where} is {text!a}; it must be a number of EV at ISO 100, for example 13."
+        ) from None
+    if not low <= value <= high:  # also refuses nan
+        raise UnitError(
+            f"{where} is {value:g} EV; it must be {low:g} to {high:g} EV at ISO 100. "
+            "Sun is about 15, an overcast day 12, a lit room 6."
         )
     return value
 

@@ -110,6 +110,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _complain(text: str, code: int) -> int:
-    line = " ".join(text.split())
+    # ASCII, like all that is printed: a console may know no other letters.
+    line = " ".join(text.split()).encode("ascii", "backslashreplace").decode()
     print(f"pinsim: {line}", file=sys.stderr)
     return code

@@ -39,7 +39,7 @@ def command(
     )
     from pinsim.cli.show import progress_bar, tell
     from pinsim.errors import DesignError
-    from pinsim.files import PICTURE_SUFFIXES, check_target
+    from pinsim.files import PICTURE_SUFFIXES, check_target, keep_inputs
     from pinsim.samples import PREFIX
     from pinsim.sheets.side_by_side import compare
 
@@ -59,6 +59,7 @@ def command(
     inputs = input_files(scene, *cameras, given["distance_map"])
     check_target(target, overwrite=overwrite, suffixes=PICTURE_SUFFIXES, inputs=inputs)
     place = load_scene(scene, given)
+    keep_inputs(target, place.files)
     notes: list[str] = []
     with progress_bar(place.name) as report:
         sheet = compare(

@@ -33,7 +33,7 @@ def command(
     """
     from pinsim.cli.designs import default_output, input_files, load_scene, make_cameras
     from pinsim.cli.show import progress_bar, tell
-    from pinsim.files import PICTURE_SUFFIXES, check_target
+    from pinsim.files import PICTURE_SUFFIXES, check_target, keep_inputs
     from pinsim.sheets.contact import contact_sheet
 
     designs = make_cameras(cameras, holes_mm=holes_mm, focals_mm=focals_mm, options=given)
@@ -41,6 +41,7 @@ def command(
     inputs = input_files(*scenes, *cameras, given["distance_map"])
     check_target(target, overwrite=overwrite, suffixes=PICTURE_SUFFIXES, inputs=inputs)
     places = [load_scene(scene, given) for scene in scenes]
+    keep_inputs(target, [file for place in places for file in place.files])
     notes: list[str] = []
     with progress_bar("contact sheet") as report:
         sheet = contact_sheet(

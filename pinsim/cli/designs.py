@@ -9,7 +9,7 @@ from typing import Any
 
 from pinsim.camera import Camera, Film, Hole, named_film
 from pinsim.errors import DesignError
-from pinsim.samples import PREFIX
+from pinsim.samples import PREFIX, names
 from pinsim.scene import Scene
 from pinsim.units import format_length, length_mm
 
@@ -139,4 +139,11 @@ def camera_stem(path: str | None, camera: Camera) -> str:
 
 def input_files(*paths: str | None) -> list[Path]:
     """Return the real files among what was given, so that none of them is written over."""
-    return [Path(p) for p in paths if p and not p.startswith(PREFIX)]
+    samples = {**names("scene"), **names("camera")}
+    files = []
+    for path in paths:
+        if path and path.startswith(PREFIX):
+            files.append(samples.get(path.removeprefix(PREFIX)))
+        elif path:
+            files.append(Path(path))
+    return [file for file in files if file is not None]

@@ -105,7 +105,8 @@ def _table(figures: Any) -> None:
         ),
         (
             "best hole",
-            f"{figures.far.best_hole_mm:.3f} mm for this depth at {format_length(figures.far.distance_mm)}",
+            f"{figures.far.best_hole_mm:.3f} mm for this depth, "
+            f"objects at {format_length(figures.far.distance_mm)}",
         ),
     ):
         head.add_row(name, value)

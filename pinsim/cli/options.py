@@ -1,7 +1,7 @@
 """Quantities with units as option types, and the groups of options that commands share."""
 
 from collections.abc import Callable
-from typing import Any, TypeVar
+from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
@@ -10,8 +10,13 @@ from pinsim.errors import UnitError
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 
+if TYPE_CHECKING:
+    _FloatType = click.ParamType[float]
+else:
+    _FloatType = click.ParamType  # click took up type parameters later than the oldest we run on
 
-class Quantity(click.ParamType[float]):
+
+class Quantity(_FloatType):
     """Text with a unit to a number in pinsim's own unit."""
 
     def __init__(self, name: str, parse: Callable[[object, str], float]) -> None:
@@ -36,6 +41,7 @@ DISTANCE = Quantity("distance", units.distance_mm)
 ANGLE = Quantity("angle", units.angle_deg)
 WAVELENGTH = Quantity("wavelength", units.wavelength_nm)
 TIME = Quantity("time", units.time_s)
+EV = Quantity("number", units.exposure_value)
 
 
 def _all(*options: Callable[[Command], Command]) -> Callable[[Command], Command]:
@@ -124,9 +130,7 @@ light_options = _all(
     click.option(
         "--time", "time_s", type=TIME, help="Exposure time: shows over- and underexposure."
     ),
-    click.option(
-        "--ev", type=float, help="Brightness of the scene, EV at ISO 100; sun is about 15."
-    ),
+    click.option("--ev", type=EV, help="Brightness of the scene, EV at ISO 100; sun is about 15."),
     click.option(
         "--look",
         type=click.Choice(["upright", "screen", "emulsion"]),

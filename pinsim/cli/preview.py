@@ -32,7 +32,7 @@ def command(
     """
     from pinsim.cli.designs import camera_stem, default_output, input_files, load_scene, make_camera
     from pinsim.cli.show import progress_bar, tell
-    from pinsim.files import check_target
+    from pinsim.files import check_bits, check_target, keep_inputs
     from pinsim.render.develop import LOOK_TEXT
     from pinsim.render.picture import SUFFIXES
     from pinsim.render.preview import preview
@@ -45,7 +45,9 @@ def command(
     target = Path(output) if output else default_output(f"{stem}-{camera_stem(camera, design)}")
     inputs = input_files(scene, camera, given["distance_map"])
     check_target(target, overwrite=overwrite, suffixes=SUFFIXES, inputs=inputs)
+    check_bits(target.suffix.lower(), given["bits"])
     place = load_scene(scene, given)
+    keep_inputs(target, place.files)
     with progress_bar(place.name) as report:
         picture = preview(
             place,
@@ -55,6 +57,7 @@ def command(
             wavelength_nm=given["wavelength_nm"],
             look=given["look"],
             width_px=given["width_px"],
+            averaged=True,
             report=report,
         )
     picture.save(target, bits=given["bits"], overwrite=overwrite)

@@ -10,13 +10,11 @@ from numpy.typing import NDArray
 
 from pinsim import files
 from pinsim.camera import Camera
-from pinsim.errors import OutputError
 from pinsim.render.develop import LOOK_TEXT, Look, develop, turn
 
 Float = NDArray[np.float32]
 
 SUFFIXES = (*files.PICTURE_SUFFIXES, ".npz")
-BITS = ("8", "16", "float")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -66,18 +64,13 @@ class Picture:
         files.write_whole(target, self._writer(target.suffix.lower(), bits), overwrite=overwrite)
 
     def _writer(self, suffix: str, bits: str | None) -> Any:
-        if bits is not None and bits not in BITS:
-            raise OutputError(f"bits is {bits!r}; it must be one of: {', '.join(BITS)}.")
+        files.check_bits(suffix, bits)
         tiff = suffix in {".tif", ".tiff"}
         if suffix == ".npz":
             return self._write_npz
         if bits == "float":
-            if not tiff:
-                raise OutputError(f"a {suffix} file holds no float; use .tif or .npz.")
             return self._write_float_tiff
         depth = int(bits or (16 if tiff else 8))
-        if depth == 16 and not tiff:
-            raise OutputError(f"a {suffix} file is written with 8 bits; for 16 use .tif.")
         return files.encode_picture(
             self.codes(depth),
             suffix,

@@ -21,9 +21,17 @@ Array = NDArray[np.float64]
 
 # A transfer function below this everywhere beyond a frequency carries no visible detail there.
 NEGLIGIBLE_OTF = 3e-3
+# Where diffraction ends the transfer function for good soon after, the grid goes on to that end:
+# cut off before, even a trace of it rings around points of light.
+ENDED_OTF = 3e-4
+END_IS_NEAR = 1.2
+# The grid's Nyquist frequency over the film image's last one: room for the resampling kernel to end.
+HEADROOM = 1.06
 # Light from a point that falls farther away than the margin; what it would add is of the order of
 # this share of the difference between the true and the imagined surroundings.
 TAIL_SHARE = 3e-3
+# A margin this wide costs little whatever the frame.
+CHEAP_MARGIN_PX = 250
 # Knots of a tabulated transfer function per cycle across the shadow; linear between them within 1e-5.
 KNOTS_PER_SHADOW = 150.0
 MAX_LAYERS = 24
@@ -100,10 +108,12 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> flo
     shadow_mm = d * (1.0 + z / distance_mm)
     # Geometric blur has ended when the jinc's envelope, 1.6/(pi x)^1.5, has.
     ended = (1.6 / NEGLIGIBLE_OTF) ** (2.0 / 3.0) / (math.pi * shadow_mm)
-    top = min(d / (shortest_mm * z), 1.05 * ended)
+    top = min(1.01 * d / (shortest_mm * z), 1.05 * ended)
     frequency, tables = band_tables(camera, material, distance_mm, top)
     strongest = np.abs(tables.sum(axis=1)).max(axis=0)
-    return float(frequency[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
+    seen = float(frequency[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
+    end = float(frequency[np.flatnonzero(strongest > ENDED_OTF)[-1]])
+    return end if end < END_IS_NEAR * seen and end < 0.999 * top else seen
 
 
 def _good_length(least: int) -> int:
@@ -141,9 +151,12 @@ def make_plan(
     camera: Camera,
     *,
     wavelength_nm: float | None = None,
-    width_px: int | None = None,
+    averaged_px: int | None = None,
 ) -> RenderPlan:
-    """Decide grid, margin and layers; refuse what cannot be rendered."""
+    """Decide grid, margin and layers; refuse what cannot be rendered.
+
+    averaged_px : columns of a coarser picture whose pixels are means, if one is wanted.
+    """
     material = camera.material
     if wavelength_nm is not None:
         if not SHORTEST_NM <= wavelength_nm <= LONGEST_NM:
@@ -151,14 +164,10 @@ def make_plan(
                 out_of_range("wavelength", wavelength_nm, "nm", SHORTEST_NM, LONGEST_NM)
             )
         material = material.at(wavelength_nm)
-    if width_px is not None and not 16 <= width_px <= MAX_WIDTH_PX:
-        raise DesignError(
-            f"a picture {width_px} px wide is not possible; give 16 to {MAX_WIDTH_PX}."
-        )
     film = camera.film
     layers = _layers(scene, camera.focal_length_mm)
     limit = _detail_limit(camera, material, max(layers))
-    natural = 0.5 / limit
+    natural = 0.5 / (HEADROOM * limit)
     notes = []
     least = math.sqrt(film.width_mm * film.height_mm / MAX_GRID_PIXELS)
     pitch = max(natural, least)
@@ -167,8 +176,8 @@ def make_plan(
             f"the film could hold {film.width_mm / natural:.0f} px across; "
             f"drawn at {film.width_mm / pitch:.0f} px, finer detail is averaged"
         )
-    if width_px is not None:
-        pitch = max(pitch, film.width_mm / width_px)
+    if averaged_px is not None:
+        pitch = max(pitch, film.width_mm / averaged_px)
     columns = max(1, math.ceil(film.width_mm / pitch - 1e-9))
     pitch = film.width_mm / columns
     rows = max(1, round(film.height_mm / pitch))
@@ -202,7 +211,7 @@ def _with_margins(
     tail_mm = 2.0 * longest_mm * z / (math.pi**2 * d * TAIL_SHARE)
     shadow_mm = d * (1.0 + z / min(layers))
     # At most half the frame beyond each side: past that a tail this faint is cheaper imagined.
-    widest = 0.25 * pitch_mm * (shape[0] + shape[1])
+    widest = pitch_mm * max(0.25 * (shape[0] + shape[1]), CHEAP_MARGIN_PX)
     reach_px = math.ceil((min(tail_mm, widest) + shadow_mm) / pitch_mm) + 8
     padded = (_good_length(shape[0] + 2 * reach_px), _good_length(shape[1] + 2 * reach_px))
     return padded, ((padded[0] - shape[0]) // 2, (padded[1] - shape[1]) // 2)

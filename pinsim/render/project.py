@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.render.plan import RenderPlan
-from pinsim.render.resample import Block, fold, make_blocks
+from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks
 from pinsim.scene import DistanceMap, Scene
 
 Float = NDArray[np.float32]
@@ -54,8 +54,10 @@ def _project_rectilinear(scene: Scene, plan: RenderPlan) -> FilmView:
     column = 0.5 * (columns - 1) + plan.right_mm() * scale
     row = 0.5 * (rows - 1) - plan.up_mm() * scale
     step = plan.pitch_mm * scale
-    down = make_blocks(row, rows, step=step, beyond=scene.beyond)
-    across = make_blocks(column, columns, step=step, beyond=scene.beyond)
+    # A photo finer than the film grid must not alias; one that is coarser is only interpolated.
+    cutoff = ALIAS_FREE if step >= 1.0 else 1.0
+    down = make_blocks(row, rows, step=step, beyond=scene.beyond, cutoff=cutoff)
+    across = make_blocks(column, columns, step=step, beyond=scene.beyond, cutoff=cutoff)
     planes = np.empty((3, *plan.padded), np.float32)
     needed = slice(min(b.take.start for b in across), max(b.take.stop for b in across))
 
@@ -138,10 +140,18 @@ def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
         )
 
     down = make_blocks(
-        np.arange(plan.padded[0]) * 2 + 0.5, 2 * plan.padded[0], step=2.0, beyond="mirror"
+        np.arange(plan.padded[0]) * 2 + 0.5,
+        2 * plan.padded[0],
+        step=2.0,
+        beyond="mirror",
+        cutoff=ALIAS_FREE,
     )
     across = make_blocks(
-        np.arange(plan.padded[1]) * 2 + 0.5, 2 * plan.padded[1], step=2.0, beyond="mirror"
+        np.arange(plan.padded[1]) * 2 + 0.5,
+        2 * plan.padded[1],
+        step=2.0,
+        beyond="mirror",
+        cutoff=ALIAS_FREE,
     )
     planes = np.empty((3, *plan.padded), np.float32)
     with ThreadPoolExecutor(_THREADS) as pool:

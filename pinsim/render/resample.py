@@ -13,22 +13,25 @@ from numpy.typing import NDArray
 
 Float = NDArray[np.float32]
 
-# Half the length of the kernel in periods of the coarser grid, and its Kaiser parameter: the
-# response is 1 within 1e-3 up to 3/4 of the coarser grid's Nyquist, 1/2 at it, below 1e-3 at 5/4.
+# Half the length of the kernel in its own periods, and its Kaiser parameter: the response is 1
+# within 1e-3 up to 3/4 of its cut-off, 1/2 at it, below 1e-3 at 5/4.
 HALF_PERIODS = 6.0
 KAISER_BETA = 5.0
+# With its cut-off here, relative to the film grid's Nyquist, the kernel has ended where the grid
+# does, so nothing is aliased; what it dims below, `response` knows and spreading gives back.
+ALIAS_FREE = 0.8
 _GROUP = 32
 
 
 def _kernel(distance: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return the windowed sinc at distances in periods of the coarser grid."""
+    """Return the windowed sinc at distances in its own periods."""
     inside = np.maximum(1.0 - (distance / HALF_PERIODS) ** 2, 0.0)
     window = np.i0(KAISER_BETA * np.sqrt(inside)) / np.i0(KAISER_BETA)
     return np.where(np.abs(distance) < HALF_PERIODS, np.sinc(distance) * window, 0.0)
 
 
 def response(frequency: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return what the kernel leaves of a wave. frequency : any shape, cycles per coarse pixel."""
+    """Return what the kernel leaves of a wave. frequency : any shape, cycles per own period."""
     fine = np.linspace(-HALF_PERIODS, HALF_PERIODS, 769)
     weights = _kernel(fine)
     weights /= weights.sum()
@@ -57,15 +60,16 @@ def fold(index: NDArray[np.intp], size: int, beyond: str) -> NDArray[np.intp]:
 
 
 def make_blocks(
-    position: NDArray[np.floating[Any]], size: int, *, step: float, beyond: str
+    position: NDArray[np.floating[Any]], size: int, *, step: float, beyond: str, cutoff: float = 1.0
 ) -> list[Block]:
     """Return the blocks that resample an axis of `size` photo pixels.
 
     position : (n,) where each film pixel's middle lies, in photo pixels, 0 = middle of the first.
     step : photo pixels per film pixel; below 1 the photo is the coarser grid.
     beyond : "mirror", "extend" or "black", for positions outside the photo.
+    cutoff : of the kernel, relative to the coarser grid's Nyquist frequency.
     """
-    period = max(1.0, step)
+    period = max(1.0, step) / cutoff
     reach = HALF_PERIODS * period
     taps = int(np.ceil(2.0 * reach)) + 1
     blocks = []
@@ -137,3 +141,14 @@ def _through(picture: Float, blocks: list[Block]) -> Float:
     for block in blocks:
         result[block.to] = block.weights @ flat[block.take]
     return result.reshape(count, *picture.shape[1:])
+
+
+def interpolate(
+    planes: Float, row: NDArray[np.floating[Any]], column: NDArray[np.floating[Any]]
+) -> Float:
+    """Read planes (n, rows, columns) between their points: float32 (n, row.size, column.size)."""
+    down = make_blocks(row, planes.shape[1], step=1.0, beyond="mirror")
+    across = make_blocks(column, planes.shape[2], step=1.0, beyond="mirror")
+    rows_last = np.moveaxis(planes, 0, -1)
+    result = _through(_through(rows_last, down).swapaxes(0, 1), across)
+    return np.ascontiguousarray(np.moveaxis(result.swapaxes(0, 1), -1, 0))

@@ -13,16 +13,17 @@ from scipy import fft
 from pinsim.progress import Progress, Reporter, ignore
 from pinsim.render.plan import RenderPlan, band_tables
 from pinsim.render.project import FilmView
-from pinsim.render.resample import response
+from pinsim.render.resample import ALIAS_FREE, response
 
 Float = NDArray[np.float32]
 Spectrum = NDArray[np.complex64]
 
 _THREADS = 2
+LEAST_RESPONSE = 0.02
 
 
 def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
-    """Return the exposure, float32 (rows, columns, channels) of the frame; NaN where not covered."""
+    """Return the exposure of frame and margins, float32 (channels, rows, columns)."""
     plan = view.plan
     filters = _Filters(plan, view.compensate)
     planes = np.moveaxis(view.light, -1, 0)
@@ -31,10 +32,9 @@ def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
         exposure = _inverse(filters.apply(_forward(planes), plan.distances_mm[0]), plan)
     else:
         exposure = _spread_layers(view, planes, view.inverse_distance, filters, report)
-    # Resampling a hard edge may ring below black by a little; film cannot be exposed by less than nothing.
+    # A hard edge may ring a little below black; film cannot be exposed by less than nothing.
     np.maximum(exposure, 0.0, out=exposure)
-    exposure[:, ~view.covered] = np.nan
-    return np.ascontiguousarray(np.moveaxis(exposure, 0, -1))
+    return exposure
 
 
 def _spread_layers(
@@ -86,9 +86,8 @@ def _forward(planes: Float) -> Spectrum:
 
 
 def _inverse(spectrum: Spectrum, plan: RenderPlan) -> Float:
-    """Return the frame's part of the planes a spectrum stands for."""
-    whole = fft.irfft2(spectrum, s=plan.padded, workers=_THREADS, overwrite_x=True)
-    return np.asarray(whole[(..., *plan.inside)], np.float32)
+    """Return the planes that a spectrum stands for."""
+    return np.asarray(fft.irfft2(spectrum, s=plan.padded, workers=_THREADS, overwrite_x=True))
 
 
 class _Filters:
@@ -115,7 +114,9 @@ class _Filters:
             # A coarser picture shows each pixel's mean, not a sample that detail could trick.
             return np.asarray(np.sinc(cycles_per_px))
         if compensate:
-            return np.asarray(1.0 / response(cycles_per_px))
+            left = response(cycles_per_px / ALIAS_FREE)
+            # Below this the grid ends, and with it all but a trace of the transfer function.
+            return np.where(left > LEAST_RESPONSE, 1.0 / np.maximum(left, LEAST_RESPONSE), 0.0)
         return np.ones_like(cycles_per_px)
 
     def _tables(self, distance_mm: float) -> tuple[NDArray[np.float64], NDArray[np.float64]]:

@@ -46,9 +46,9 @@ def read_photo(path: Path) -> Photo:
     if _is_float_or_deep_tiff(path):
         return _from_tiff(path)
     with _opened(path, "photo") as image:
-        tags = image.getexif()
-        orientation = tags.get(_ORIENTATION, 1)
-        focal_px = focal_length_px(tags.get_ifd(_EXIF_DIRECTORY), image.width, image.height)
+        focal_px = _focal_length_px(image)
+        image.load()
+        orientation = _orientation_left(image)
         profile = image.info.get("icc_profile")
         if _is_16bit_png(path):
             import imagecodecs
@@ -57,7 +57,7 @@ def read_photo(path: Path) -> Photo:
             channels = {1: "L", 2: "LA", 3: "RGB", 4: "RGBA"}
             mode = channels[1 if codes.ndim == 2 else codes.shape[2]]
         else:
-            codes, mode = _eight_bit(image, bool(profile))
+            codes, mode = _eight_bit(image, bool(profile), path)
     return _photo(codes, mode, orientation, profile, focal_px, path)
 
 
@@ -67,19 +67,23 @@ def read_plain(path: Path, kind: str) -> NDArray[Any]:
     Returns (rows, columns), uint8, uint16 or float32.
     """
     _require_file(path, kind)
-    orientation = 1
+    orientation: object = 1
     if _is_float_or_deep_tiff(path):
-        codes, _, orientation = _read_tiff(path, kind)
+        codes, _, _, orientation = _read_tiff(path, kind)
     elif _is_16bit_png(path):
         import imagecodecs
 
         with _opened(path, kind) as image:
-            orientation = image.getexif().get(_ORIENTATION, 1)
+            orientation = _orientation_left(image)
             codes = imagecodecs.png_decode(path.read_bytes())
     else:
         with _opened(path, kind) as image:
-            orientation = image.getexif().get(_ORIENTATION, 1)
-            codes = np.asarray(image)
+            image.load()
+            orientation = _orientation_left(image)
+            # A palette's codes are places in a list of colours; its greys are what is meant.
+            codes = np.asarray(image.convert("RGB") if image.mode == "P" else image)
+    if codes.ndim == 3 and codes.shape[2] in (2, 4) and _opaque(codes[..., -1]):
+        codes = codes[..., :-1]
     if codes.ndim == 3 and np.array_equal(codes[..., :1].repeat(codes.shape[2], 2), codes):
         codes = codes[..., 0]
     if codes.ndim != 2:
@@ -91,14 +95,45 @@ def read_plain(path: Path, kind: str) -> NDArray[Any]:
 
 
 def _require_file(path: Path, kind: str) -> None:
-    if not path.exists():
-        raise SceneError(f"{path}: no such file; give the path of a {kind}.")
+    try:
+        size = path.stat().st_size
+    except OSError as problem:
+        if isinstance(problem, FileNotFoundError | NotADirectoryError):
+            raise SceneError(f"{path}: no such file; give the path of a {kind}.") from None
+        raise SceneError(f"{path} cannot be read: {problem.strerror}.") from None
     if path.is_dir():
         raise SceneError(f"{path} is a folder; give one {kind} in it.")
-    if path.stat().st_size == 0:
+    if size == 0:
         raise SceneError(f"{path} is empty (0 bytes); copy the {kind} again.")
     if not os.access(path, os.R_OK):
         raise SceneError(f"{path} cannot be read; check its permissions.")
+
+
+def _exif(image: Image.Image) -> Image.Exif:
+    """Return a picture's Exif data; damaged data counts as none, as the pixels may be sound."""
+    try:
+        return image.getexif()
+    except Exception:  # struct.error, SyntaxError, ValueError ...
+        return Image.Exif()
+
+
+def _focal_length_px(image: Image.Image) -> float | None:
+    """Return the focal length that an opened, not yet loaded picture tells, in its own pixels."""
+    exif = _exif(image)
+    width, height = image.size
+    # Pillow gives a TIFF's size as if turned already, before it has turned it.
+    if image.format == "TIFF" and exif.get(_ORIENTATION) in {5, 6, 7, 8}:
+        width, height = height, width
+    try:
+        return focal_length_px(exif.get_ifd(_EXIF_DIRECTORY), width, height)
+    except Exception:  # a directory that points nowhere
+        return None
+
+
+def _orientation_left(image: Image.Image) -> object:
+    """Return how a loaded picture still has to be turned."""
+    # Pillow turns TIFFs by itself while loading and then drops the tag, so it is asked for afterwards.
+    return _exif(image).get(_ORIENTATION, 1)
 
 
 @contextmanager
@@ -171,8 +206,11 @@ def _is_float_or_deep_tiff(path: Path) -> bool:
         return True
 
 
-def _read_tiff(path: Path, kind: str) -> tuple[NDArray[Any], bytes | None, int]:
-    """Return codes, colour profile and orientation of a 16-bit or float TIFF's first page."""
+def _read_tiff(path: Path, kind: str) -> tuple[NDArray[Any], str, bytes | None, object]:
+    """Return codes, mode, colour profile and orientation of a 16-bit or float TIFF's first page.
+
+    Modes: L, LA, RGB, RGBA (not premultiplied), CMYK; others are refused.
+    """
     import logging
 
     import tifffile
@@ -189,8 +227,9 @@ def _read_tiff(path: Path, kind: str) -> tuple[NDArray[Any], bytes | None, int]:
             codes = page.asarray()
             if page.axes.startswith("S"):  # planes one after the other
                 codes = np.moveaxis(codes, 0, -1)
+            codes, mode = _tiff_mode(codes, int(page.photometric), list(page.extrasamples), path)
             profile = page.tags.valueof("InterColorProfile")
-            orientation = int(page.tags.valueof("Orientation") or 1)
+            orientation = page.tags.valueof("Orientation")
     except SceneError:
         raise
     except Exception as problem:
@@ -199,14 +238,46 @@ def _read_tiff(path: Path, kind: str) -> tuple[NDArray[Any], bytes | None, int]:
             f"{path} is damaged or of a kind of TIFF that pinsim does not read "
             f"({ascii(reason)[1:-1]}); export the {kind} again, without layers."
         ) from None
-    return codes, profile, orientation
+    return codes, mode, profile, orientation
+
+
+_TIFF_COLOURS = {0: "L", 1: "L", 2: "RGB", 5: "CMYK"}  # PhotometricInterpretation, TIFF 6.0
+
+
+def _tiff_mode(
+    codes: NDArray[Any], photometric: int, extra: list[int], path: Path
+) -> tuple[NDArray[Any], str]:
+    """Return a page's codes without channels that are no colour, white as the highest, and its mode."""
+    mode = _TIFF_COLOURS.get(photometric)
+    if mode is None or codes.ndim not in (2, 3):
+        raise SceneError(
+            f"{path} is a TIFF of another kind of colour ({photometric}) or shape {codes.shape}; "
+            "export it as RGB, CMYK or grey, one picture without layers."
+        )
+    if photometric == 0:  # white is 0
+        if codes.dtype != np.uint16:
+            raise SceneError(f"{path} is a TIFF whose white is 0; export it as ordinary grey.")
+        codes = np.iinfo(np.uint16).max - codes
+    colours = len(mode)
+    if codes.ndim == 2:
+        return codes, mode
+    # Extra channels: 1 alpha that is multiplied in already, 2 alpha beside, 0 anything.
+    if mode == "CMYK" or not extra or extra[0] not in (1, 2):
+        codes = codes[..., :colours]
+        return (codes[..., 0] if colours == 1 else codes), mode
+    codes = codes[..., : colours + 1]
+    if extra[0] == 1:
+        top = 1.0 if np.issubdtype(codes.dtype, np.floating) else np.iinfo(codes.dtype).max
+        alpha = codes[..., -1:].astype(np.float32) / np.float32(top)
+        plain = np.asarray(codes[..., :-1] / np.where(alpha > 0.0, alpha, np.float32(1.0)))
+        if top != 1.0:
+            plain = np.minimum(plain, top).round()
+        codes = np.concatenate([plain.astype(codes.dtype), codes[..., -1:]], axis=2)
+    return codes, f"{mode}A"
 
 
 def _from_tiff(path: Path) -> Photo:
-    codes, profile, orientation = _read_tiff(path, "photo")
-    mode = {1: "L", 2: "LA", 3: "RGB", 4: "RGBA"}.get(1 if codes.ndim == 2 else codes.shape[-1])
-    if mode is None or codes.ndim not in (2, 3):
-        raise SceneError(f"{path} has shape {codes.shape}; a photo has 1 to 4 channels.")
+    codes, mode, profile, orientation = _read_tiff(path, "photo")
     if np.issubdtype(codes.dtype, np.floating):
         # Float files are linear light by common practice of renderers and raw converters.
         profile = None
@@ -220,14 +291,13 @@ def _from_tiff(path: Path) -> Photo:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
             with Image.open(path) as image:
-                tags = image.getexif().get_ifd(_EXIF_DIRECTORY)
-                focal_px = focal_length_px(tags, image.width, image.height)
+                focal_px = _focal_length_px(image)
     except Exception:  # the pixels are read; only the angle of view stays unknown
         focal_px = None
     return _photo(codes, mode, orientation, profile, focal_px, path)
 
 
-def _eight_bit(image: Image.Image, profiled: bool) -> tuple[NDArray[Any], str]:
+def _eight_bit(image: Image.Image, profiled: bool, path: Path) -> tuple[NDArray[Any], str]:
     """Return 8-bit codes and their mode, one of L, LA, RGB, RGBA, CMYK; 16-bit grey as it is."""
     if image.mode.startswith("I"):
         return np.asarray(image).astype(np.uint16), "L"
@@ -241,7 +311,12 @@ def _eight_bit(image: Image.Image, profiled: bool) -> tuple[NDArray[Any], str]:
         # Without its profile CMYK has no defined colour; Pillow's plain rule is what viewers show.
         image = image.convert("RGB")
     elif image.mode not in {"L", "LA", "RGB", "RGBA", "CMYK"}:
-        image = image.convert("RGB")
+        if image.mode not in {"RGBX", "YCbCr", "HSV", "La", "RGBa"}:
+            raise SceneError(
+                f"{path} is a picture in {image.mode} colour, which pinsim does not read; "
+                "export it as RGB."
+            )
+        image = image.convert({"La": "LA", "RGBa": "RGBA"}.get(image.mode, "RGB"))
     mode = image.mode
     return np.asarray(image), mode
 
@@ -249,7 +324,7 @@ def _eight_bit(image: Image.Image, profiled: bool) -> tuple[NDArray[Any], str]:
 def _photo(
     codes: NDArray[Any],
     mode: str,
-    orientation: int,
+    orientation: object,
     profile: bytes | None,
     focal_px: float | None,
     path: Path,
@@ -267,22 +342,26 @@ def _photo(
         decode = None
     else:
         decode = srgb_table(8 if codes.dtype == np.uint8 else 16)
-        if profile and not _is_srgb(profile):
-            linear_codes = _through_profile(codes, profile, mode, path)
+        if profile and profile[16:20] == b"RGB " and mode in {"L", "LA"}:
+            codes, mode = np.repeat(codes, 3, axis=2), "RGB"
+        if profile and not _is_srgb(profile, mode):
+            linear_codes = _through_profile(codes, profile, mode)
             if linear_codes is None:
                 notes.append("its colour profile cannot be used; read as sRGB")
             else:
                 codes = linear_codes
                 decode = np.linspace(0.0, 1.0, 65536, dtype=np.float32)
     if codes.shape[2] == 4:  # CMYK whose profile failed: the plain rule
-        ink = codes.astype(np.float32) / 255.0
-        codes = np.round(255.0 * (1.0 - ink[..., :3]) * (1.0 - ink[..., 3:])).astype(np.uint8)
+        top = np.float32(np.iinfo(codes.dtype).max)
+        ink = codes.astype(np.float32) / top
+        paper = (1.0 - ink[..., :3]) * (1.0 - ink[..., 3:])
+        codes = np.round(top * paper).astype(codes.dtype)
     if codes.shape[2] == 1:
         codes = np.repeat(codes, 3, axis=2)
     if alpha is not None and not _opaque(alpha):
         light = codes.astype(np.float32) if decode is None else np.take(decode, codes)
-        top = 1.0 if decode is None else float(np.iinfo(alpha.dtype).max)
-        clear = (alpha.astype(np.float32) / np.float32(top))[..., None]
+        opaque = 1.0 if decode is None else float(np.iinfo(alpha.dtype).max)
+        clear = (alpha.astype(np.float32) / np.float32(opaque))[..., None]
         codes, decode = light * clear + (1.0 - clear), None
         notes.append("transparent parts are taken as white paper")
     if decode is None:
@@ -298,26 +377,30 @@ def _opaque(alpha: NDArray[Any]) -> bool:
     return bool((alpha >= top).all())
 
 
-def _upright(codes: NDArray[Any], orientation: Any) -> NDArray[Any]:
-    turn = _UPRIGHT.get(orientation)  # 0 and 9 occur in the wild and mean nothing
+def _upright(codes: NDArray[Any], orientation: object) -> NDArray[Any]:
+    # 0, 9 and lists occur in the wild and mean nothing.
+    turn = _UPRIGHT.get(orientation) if isinstance(orientation, int) else None
     return codes if turn is None else np.asarray(turn(codes))
 
 
-def _is_srgb(profile: bytes) -> bool:
-    import io
+# Codes to try a profile on: greys, and every mixture of five steps of red, green and blue.
+_TRIAL_STEPS = (0, 64, 128, 192, 255)
 
-    from PIL import ImageCms
 
-    try:
-        text = ImageCms.getProfileDescription(ImageCms.ImageCmsProfile(io.BytesIO(profile)))
-    except (ImageCms.PyCMSError, OSError):
+def _is_srgb(profile: bytes, mode: str) -> bool:
+    """Tell whether a profile does what sRGB does; names do not tell, as linear ones bear it too."""
+    if mode not in {"RGB", "RGBA"}:
         return False
-    return "srgb" in text.lower()
+    mixed = np.stack(np.meshgrid(*[np.array(_TRIAL_STEPS, np.uint8)] * 3), axis=-1).reshape(-1, 3)
+    trial = np.concatenate([mixed, np.arange(256, dtype=np.uint8)[:, None].repeat(3, axis=1)])
+    light = _through_profile(trial[None], profile, "RGB")
+    if light is None:
+        return False
+    # Published sRGB profiles differ in the rounding of their primaries and in their darkest codes.
+    return bool(np.abs(light[0] / 65535.0 - srgb_table(8)[trial]).max() < 4e-3)
 
 
-def _through_profile(
-    codes: NDArray[Any], profile: bytes, mode: str, path: Path
-) -> NDArray[np.uint16] | None:
+def _through_profile(codes: NDArray[Any], profile: bytes, mode: str) -> NDArray[np.uint16] | None:
     """Return linear sRGB light in 16-bit codes, or None when the profile does not fit the picture."""
     import imagecodecs
 

@@ -13,17 +13,17 @@ from pinsim.scene.distance import NEAREST_MM, DistanceMap, read_distance_map
 from pinsim.scene.door import read_photo
 from pinsim.scene.photo import Photo, photo_from_linear
 from pinsim.tables import Table, read_toml
-from pinsim.units import angle_deg, distance_mm, length_mm
+from pinsim.units import EV_RANGE, angle_deg, distance_mm, exposure_value, length_mm
 
 Projection = Literal["rectilinear", "equirectangular"]
 PROJECTIONS = ("rectilinear", "equirectangular")
 
 # What is imagined beyond the photo's edge, for the little light that comes from there.
 Boundary = Literal["mirror", "extend", "black"]
-BOUNDARIES = ("mirror", "extend", "black")
+# "extend" invents least: a sun near the edge is not doubled, dark surroundings stay dark.
+BOUNDARIES = ("extend", "mirror", "black")
 
 VIEW_RANGE_DEG = {"rectilinear": (0.5, 170.0), "equirectangular": (1.0, 360.0)}
-EV_RANGE = (-10.0, 25.0)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -32,6 +32,7 @@ class Scene:
 
     distance : one distance in mm for all (math.inf is allowed), or a map.
     beyond : the rule for light from beyond the photo's edge. ev : scene average at ISO 100.
+    files : what it was read from, so that nothing is written over them.
     """
 
     name: str
@@ -39,9 +40,10 @@ class Scene:
     horizontal_view_deg: float
     projection: Projection = "rectilinear"
     distance: float | DistanceMap = math.inf
-    beyond: Boundary = "mirror"
+    beyond: Boundary = "extend"
     ev: float | None = None
     notes: tuple[str, ...] = ()
+    files: tuple[Path, ...] = ()
 
     def __post_init__(self) -> None:
         if self.projection not in PROJECTIONS:
@@ -142,7 +144,7 @@ class Scene:
         if distance_map is None and map_step_mm is not None:
             raise SceneError("a map step needs a distance map (--distance-map FILE).")
         plan["projection"] = projection or plan.get("projection") or "rectilinear"
-        plan["beyond"] = beyond or plan.get("beyond") or "mirror"
+        plan["beyond"] = beyond or plan.get("beyond") or "extend"
         if horizontal_view_deg is not None:
             plan["view"] = horizontal_view_deg
         return _built(plan, name, file)
@@ -156,7 +158,7 @@ def _plan_from_table(top: Table) -> dict[str, Any]:
     if top.has("horizontal_view"):
         plan["view"] = angle_deg(top.take("horizontal_view"), top.place("horizontal_view"))
     plan["projection"] = top.text("projection", "rectilinear", PROJECTIONS)
-    plan["beyond"] = top.text("beyond", "mirror", BOUNDARIES)
+    plan["beyond"] = top.text("beyond", "extend", BOUNDARIES)
     distance = top.table("distance")
     if distance.has("constant") and distance.has("map"):
         raise SceneError(
@@ -166,13 +168,18 @@ def _plan_from_table(top: Table) -> dict[str, Any]:
         plan["constant"] = distance_mm(distance.take("constant"), distance.place("constant"))
     if distance.has("map"):
         plan["map"] = distance.text("map", "")
+        if not plan["map"]:
+            raise SceneError(f"{distance.place('map')} is empty; it must be a file name in quotes.")
         plan["step"] = length_mm(distance.need("step", '"1 mm"'), distance.place("step"))
+    elif distance.has("step"):
+        raise SceneError(
+            f'{distance.where}: a step belongs to a map; write map = "FILE" beside it, '
+            "or leave it out."
+        )
     distance.refuse_leftovers()
     light = top.table("light")
-    ev = light.take("ev")
-    if ev is not None and (isinstance(ev, bool) or not isinstance(ev, int | float)):
-        raise SceneError(f"{light.place('ev')} is {ev!r}; it must be a number such as 13.")
-    plan["ev"] = ev
+    if light.has("ev"):
+        plan["ev"] = exposure_value(light.take("ev"), light.place("ev"))
     light.refuse_leftovers()
     top.refuse_leftovers()
     return plan
@@ -211,6 +218,7 @@ def _built(plan: dict[str, Any], name: str, file: Path) -> Scene:
             beyond=plan["beyond"],
             ev=plan.get("ev"),
             notes=tuple(notes),
+            files=tuple(Path(one) for one in (file, plan["photo"], plan.get("map")) if one),
         )
     except SceneError as error:
         raise SceneError(f"{file}: {error}") from None

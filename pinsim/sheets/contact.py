@@ -67,6 +67,7 @@ def contact_sheet(
                 wavelength_nm=wavelength_nm,
                 look=look,
                 width_px=max(16, round(width)),
+                averaged=True,
             )
             row.append(picture)
             if on_picture:
