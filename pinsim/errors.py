@@ -56,7 +56,7 @@ def out_of_range(key: str, got: float, unit: str, low: float, high: float) -> st
 
 def nearest(name: str, allowed: Iterable[str]) -> str:
     """Return " Did you mean 'x'?" for the closest allowed name, or nothing."""
-    near = difflib.get_close_matches(name, list(allowed), n=1, cutoff=0.5)
+    near = difflib.get_close_matches(name, list(allowed), n=1, cutoff=0.6)
     return f" Did you mean {near[0]!r}?" if near else ""
 
 

@@ -23,7 +23,7 @@ def check_target(
     """Refuse, before any work is done, a target that could not be written at the end."""
     if path.suffix.lower() not in suffixes:
         raise OutputError(
-            f"{path}: cannot tell the kind of file from {path.suffix or 'no ending'!r}; "
+            f"{path}: a file's ending tells its kind, and this has {path.suffix or 'none'}; "
             f"use one of {', '.join(suffixes)}."
         )
     try:

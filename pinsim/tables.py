@@ -10,7 +10,7 @@ from pinsim.errors import PinsimError, nearest
 
 # How alike two keys must be to take one for the other misspelt: diametr and diameter are 0.93 alike,
 # tone and hole, both right, 0.5.
-_SLIP = 0.7
+_SLIP = 0.65
 
 
 def read_toml(path: Path, error: type[PinsimError], kind: str) -> dict[str, Any]:
@@ -30,9 +30,12 @@ def read_toml(path: Path, error: type[PinsimError], kind: str) -> dict[str, Any]
         raise error(f"{path} is empty; a {kind} is a TOML file, see docs/files.md.")
     try:
         return tomllib.loads(text)
-    except (ValueError, RecursionError) as problem:  # also numbers and nesting without end
+    except (ValueError, RecursionError) as problem:
+        # What is no TOMLDecodeError is a number or a nesting too long to be meant.
+        known = isinstance(problem, tomllib.TOMLDecodeError)
+        reason = str(problem) if known else "a value in it is far too long"
         raise error(
-            f"{path} is not valid TOML: {problem}. Text values stand in quotation marks."
+            f"{path} is not valid TOML: {reason}. Text values stand in quotation marks."
         ) from None
 
 

@@ -92,8 +92,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except (click.ClickException, PinsimError) as error:
         if debug:
             raise
-        text = error.format_message() if isinstance(error, click.ClickException) else str(error)
-        return _complain(text, 2)
+        return _complain(_text_of(error), 2)
     except (click.Abort, KeyboardInterrupt):
         return _complain("stopped; nothing was written.", 1)
     except BrokenPipeError:
@@ -107,6 +106,16 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return _complain(
             f"something failed that should not: {reason} (pinsim --debug shows where)", 1
         )
+
+
+def _text_of(error: click.ClickException | PinsimError) -> str:
+    if not isinstance(error, click.ClickException):
+        return str(error)
+    text = error.format_message()
+    if isinstance(error, click.UsageError):
+        command = error.ctx.command_path if error.ctx else "pinsim"
+        text = f"{text.rstrip('.')}; see {command} --help."
+    return text
 
 
 def _complain(text: str, code: int) -> int:

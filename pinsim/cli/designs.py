@@ -42,7 +42,7 @@ def make_camera(
     if options.get("plate_mm") is not None:
         hole = replace(camera.hole, plate_thickness_mm=options["plate_mm"])
         camera = replace(camera, hole=hole)
-    if options.get("film") or options.get("portrait"):
+    if options.get("film") is not None or options.get("portrait"):
         camera = replace(
             camera, film=_film(options.get("film"), options.get("portrait"), camera.film)
         )
@@ -52,7 +52,7 @@ def make_camera(
     if options.get("rise_mm") is not None:
         film = replace(film, shift_up_mm=options["rise_mm"])
     camera = replace(camera, film=film)
-    if options.get("material"):
+    if options.get("material") is not None:
         camera = replace(camera, material_name=options["material"])
     if options.get("tone"):
         camera = replace(camera, tone=options["tone"])
@@ -126,7 +126,7 @@ def _film(text: str | None, portrait: bool | None, present: Film) -> Film:
 
 def default_output(stem: str, suffix: str = ".png") -> Path:
     """Return a file name in the working folder made of plain words."""
-    plain = re.sub(r"[^a-z0-9.]+", "-", stem.lower()).strip("-.")
+    plain = re.sub(r"[^a-z0-9.]+", "-", stem.lower()).strip("-.")[-120:]
     return Path(f"{plain or 'pinsim'}{suffix}")
 
 

@@ -6,7 +6,6 @@ from typing import TYPE_CHECKING, Any, TypeVar
 import click
 
 from pinsim import units
-from pinsim.errors import UnitError
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 
@@ -26,14 +25,11 @@ class Quantity(_FloatType):
     def convert(
         self, value: Any, param: click.Parameter | None, ctx: click.Context | None
     ) -> float:
-        """Return the number; click shows our text for a wrong one."""
+        """Return the number; a wrong one is a UnitError, whose text needs nothing of click's."""
         if isinstance(value, float):
             return value
         where = param.opts[0] if param is not None else self.name
-        try:
-            return self._parse(value, where)
-        except UnitError as error:
-            raise click.UsageError(str(error)) from None
+        return self._parse(value, where)
 
 
 LENGTH = Quantity("length", units.length_mm)

@@ -1,8 +1,11 @@
-"""The optics of a bare hole: arrays and numbers in, arrays out; no file, no image, no camera format.
+"""The optics of a bare hole: arrays and numbers in, arrays out; no file, no image, no camera.
 
-    round_hole.py  transfer function and point image of a round hole, one wavelength, one quadrature
-    sharpness.py   what these mean to an eye: finest detail, spot size, the best hole
-    falloff.py     how much light reaches a film point: film tilt, distance, plate thickness
+round_hole.py    transfer function and point image of a round hole on the axis, one quadrature
+opening.py       openings of any shape, and the overlap of each with itself
+film_surface.py  flat and bent film: where its points lie, what the hole looks like from there
+film_transfer.py the transfer function anywhere on any film
+falloff.py       how much light reaches a flat film: distance, tilt, thickness of plate
+sharpness.py     what these mean to an eye: finest detail, spot size, the best hole
 
 All lengths are mm, wavelengths nm, frequencies cycles/mm on the film.
 """
@@ -11,6 +14,9 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from pinsim.optics.falloff import flat_falloff, plate_transmission
+    from pinsim.optics.film_transfer import OpticalCamera, film_otf, ray_otf
+    from pinsim.optics.film_surface import ChiefRays, FilmSurface
+    from pinsim.optics.opening import Ellipse, Opening, Slit, Traced
     from pinsim.optics.round_hole import overlap_otf, round_otf, round_psf
     from pinsim.optics.sharpness import (
         Light,
@@ -21,26 +27,44 @@ if TYPE_CHECKING:
     )
 
 __all__ = [
+    "ChiefRays",
+    "Ellipse",
+    "FilmSurface",
     "Light",
+    "Opening",
+    "OpticalCamera",
+    "Slit",
+    "Traced",
     "best_diameter_mm",
+    "film_otf",
     "finest_detail",
     "flat_falloff",
     "light_otf",
     "overlap_otf",
     "plate_transmission",
+    "ray_otf",
     "round_otf",
     "round_psf",
     "spot_diameter_mm",
 ]
 
 _ROOM_OF = {
+    "ChiefRays": "film_surface",
+    "Ellipse": "opening",
+    "FilmSurface": "film_surface",
     "Light": "sharpness",
+    "Opening": "opening",
+    "OpticalCamera": "film_transfer",
+    "Slit": "opening",
+    "Traced": "opening",
     "best_diameter_mm": "sharpness",
+    "film_otf": "film_transfer",
     "finest_detail": "sharpness",
     "flat_falloff": "falloff",
     "light_otf": "sharpness",
     "overlap_otf": "round_hole",
     "plate_transmission": "falloff",
+    "ray_otf": "film_transfer",
     "round_otf": "round_hole",
     "round_psf": "round_hole",
     "spot_diameter_mm": "sharpness",
@@ -53,4 +77,6 @@ def __getattr__(name: str) -> Any:
         raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
     import importlib
 
-    return getattr(importlib.import_module(f"{__name__}.{_ROOM_OF[name]}"), name)
+    value = getattr(importlib.import_module(f"{__name__}.{_ROOM_OF[name]}"), name)
+    globals()[name] = value  # also keeps a room of the same name from hiding it
+    return value

@@ -17,13 +17,13 @@ _BLOCK = 1 << 20  # values of an integrand held at once: 8 MB, whatever the size
 
 
 @lru_cache(maxsize=32)
-def _gauss_legendre(count: int) -> tuple[Array, Array]:
+def gauss_legendre(count: int) -> tuple[Array, Array]:
     """Return nodes and weights on [0, 1]."""
     nodes, weights = np.polynomial.legendre.leggauss(count)
     return 0.5 * (nodes + 1.0), 0.5 * weights
 
 
-def _node_count(phase: float) -> int:
+def node_count(phase: float) -> int:
     """Return how many Gauss-Legendre nodes settle an integrand whose phase runs over `phase` rad.
 
     Convergence is geometric once there are more than phase/2 nodes; 26 more reach 1e-13. Rounded
@@ -62,7 +62,7 @@ def overlap_otf(shift_mm: ArrayLike, phase_frequency: ArrayLike, *, diameter_mm:
     start = 0
     while start < order.size:
         stop = min(order.size, start + 4096)
-        count = _node_count(float(reach[stop - 1]))
+        count = node_count(float(reach[stop - 1]))
         stop = min(stop, start + max(1, _BLOCK // count))
         result[order[start:stop]] = _overlap_block(
             flat_shift[order[start:stop]], flat_phase[order[start:stop]], radius, count
@@ -72,7 +72,7 @@ def overlap_otf(shift_mm: ArrayLike, phase_frequency: ArrayLike, *, diameter_mm:
 
 
 def _overlap_block(shift: Array, phase: Array, radius: float, count: int) -> Array:
-    nodes, weights = _gauss_legendre(count)
+    nodes, weights = gauss_legendre(count)
     half = shift / (2.0 * radius)
     start = np.arcsin(np.minimum(half, 1.0))
     span = 0.5 * math.pi - start
@@ -138,9 +138,9 @@ def round_psf(
     start = 0
     while start < order.size:
         stop = min(order.size, start + 1024)
-        count = _node_count(math.pi * fresnel_number + float(v[order[stop - 1]]))
+        count = node_count(math.pi * fresnel_number + float(v[order[stop - 1]]))
         stop = min(stop, start + max(1, _BLOCK // count))
-        nodes, weights = _gauss_legendre(count)
+        nodes, weights = gauss_legendre(count)
         lens = np.exp(1j * math.pi * fresnel_number * nodes * nodes) * nodes * weights
         block = order[start:stop]
         field = j0(v[block, None] * nodes) @ lens

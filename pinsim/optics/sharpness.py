@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from pinsim.optics.round_hole import _gauss_legendre, overlap_otf
+from pinsim.optics.round_hole import gauss_legendre, overlap_otf
 
 Array = NDArray[np.float64]
 
@@ -122,7 +122,7 @@ def spot_diameter_mm(
     # Far above 100 cycles across the shadow the transfer function has died to 1e-3.
     top = np.minimum(cutoffs, 100.0 / (scale * diameter_mm))
     count = 64 + int(4.0 * float(top.max()) * outer + 2.0 * scale * diameter_mm * float(top.max()))
-    nodes, weights = _gauss_legendre(count)
+    nodes, weights = gauss_legendre(count)
     nu = top[:, None] * nodes
     shift = light.wavelengths_nm[:, None] * (1e-6 * focal_length_mm) * nu
     otf = overlap_otf(shift, scale * nu, diameter_mm=diameter_mm)

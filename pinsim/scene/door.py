@@ -143,7 +143,9 @@ def _opened(path: Path, kind: str) -> Iterator[Image.Image]:
         with warnings.catch_warnings():
             # Pillow warns at half its limit and complains of odd Exif; neither is the user's to mend.
             warnings.simplefilter("ignore")
-            with Image.open(path) as image:
+            # An open file, not a path: a path would let Pillow map raw TIFFs into memory, and it
+            # maps those that have to be turned with rows and columns exchanged.
+            with path.open("rb") as file, Image.open(file) as image:
                 yield image
     except SceneError:
         raise

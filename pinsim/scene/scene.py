@@ -120,9 +120,12 @@ class Scene:
         """
         file = resolve(path, "scene", SceneError)
         if file.suffix.lower() == ".toml":
-            plan = _plan_from_table(
-                Table(read_toml(file, SceneError, "scene file"), str(file), SceneError)
-            )
+            values = read_toml(file, SceneError, "scene file")
+            if "focal_length" in values and "photo" not in values:
+                raise SceneError(
+                    f"{file} is a camera design, not a scene; the scene or photo comes first."
+                )
+            plan = _plan_from_table(Table(values, str(file), SceneError))
             name = file.parent.name if file.name == "scene.toml" else file.stem
             plan["photo"] = file.parent / plan["photo"]
             if plan.get("map"):

@@ -1,0 +1,132 @@
+"""TOML to Camera: every key is known, every length has a unit, every error says where it is."""
+
+import math
+from dataclasses import replace
+from pathlib import Path
+from typing import Any
+
+from pinsim.camera.camera import TONES, Camera
+from pinsim.camera.film import BEND_AXES, Film, named_film
+from pinsim.camera.hole import SHAPES, Hole
+from pinsim.errors import DesignError
+from pinsim.material import DEFAULT_MATERIAL, material
+from pinsim.samples import resolve
+from pinsim.tables import Table, read_toml
+from pinsim.units import length_mm
+
+
+def read_design(path: str | Path) -> Camera:
+    """Read a design from a TOML file, or from sample:NAME."""
+    file = resolve(path, "camera", DesignError)
+    table = Table(read_toml(file, DesignError, "camera design"), str(file), DesignError)
+    return _camera(table, file.parent)
+
+
+def _camera(top: Table, folder: Path) -> Camera:
+    name = top.text("name", "camera")
+    focal_length = length_mm(top.need("focal_length", '"60 mm"'), top.place("focal_length"))
+    hole = _hole(top.table("hole"), folder)
+    film, material_name = _film(top.table("film"))
+    tone = top.text("tone", "positive", TONES)
+    top.refuse_leftovers()
+    try:
+        return Camera(
+            name=name,
+            focal_length_mm=focal_length,
+            hole=hole,
+            film=film,
+            material_name=material_name,
+            tone="negative" if tone == "negative" else "positive",
+        )
+    except DesignError as error:
+        raise DesignError(f"{top.where}: {error}") from None
+
+
+def _located(error: DesignError, table: Table) -> DesignError:
+    text = str(error)
+    return DesignError(text if text.startswith(table.where) else f"{table.where}: {text}")
+
+
+def _hole(table: Table, folder: Path) -> Hole:
+    shape = table.text("shape", "round", SHAPES)
+    thickness = length_mm(table.take("plate_thickness", "0 mm"), table.place("plate_thickness"))
+    try:
+        if shape == "traced":
+            hole = _traced(table, folder, thickness)
+        elif shape == "round":
+            value = table.need("diameter", '"0.30 mm"')
+            hole = Hole(
+                diameter_mm=length_mm(value, table.place("diameter")), plate_thickness_mm=thickness
+            )
+        else:
+            width, height = _two_lengths(
+                table, "diameter", table.need("diameter", '["0.3 mm", "0.2 mm"]')
+            )
+            make = Hole.oval if shape == "oval" else Hole.slit
+            hole = make(width, height, plate_thickness_mm=thickness)
+        table.refuse_leftovers()
+    except DesignError as error:
+        raise _located(error, table) from None
+    return hole
+
+
+def _traced(table: Table, folder: Path, thickness: float) -> Hole:
+    raise DesignError(f"{table.place('shape')}: traced holes come with the next step.")
+
+
+def _film(table: Table) -> tuple[Film, str]:
+    right, up = _two_lengths(table, "shift", table.take("shift", ["0 mm", "0 mm"]))
+    material_name = table.text("material", DEFAULT_MATERIAL)
+    radius, axis = _surface(table)
+    portrait = table.text("orientation", "landscape", ("landscape", "portrait")) == "portrait"
+    try:
+        if table.has("frame"):
+            film = named_film(table.text("frame", ""), portrait=portrait)
+            if table.has("width") or table.has("height"):
+                raise DesignError("frame and width or height exclude each other; keep one of them.")
+        else:
+            width = length_mm(
+                table.need("width", '"56 mm"  (or frame = "6x6")'), table.place("width")
+            )
+            height = length_mm(table.need("height", '"56 mm"'), table.place("height"))
+            if portrait:
+                width, height = min(width, height), max(width, height)
+            film = Film(width_mm=width, height_mm=height)
+        table.refuse_leftovers()
+        material(material_name)
+        film = replace(
+            film,
+            shift_right_mm=right,
+            shift_up_mm=up,
+            bend_radius_mm=radius,
+            bend_axis="horizontal" if axis == "horizontal" else "vertical",
+        )
+    except DesignError as error:
+        raise _located(error, table) from None
+    return film, material_name
+
+
+def _surface(table: Table) -> tuple[float, str]:
+    """Return bend radius and axis; flat is an infinite radius."""
+    surface: Any = table.take("surface", "flat")
+    if surface == "flat":
+        return math.inf, "vertical"
+    if not isinstance(surface, dict):
+        raise DesignError(
+            f'{table.place("surface")} is {surface!r}; it must be "flat" or '
+            '{ bend_radius = "60 mm" }, with axis = "horizontal" if it curls up and down.'
+        )
+    bent = Table(surface, table.place("surface"), DesignError)
+    radius = length_mm(bent.need("bend_radius", '"60 mm"'), bent.place("bend_radius"))
+    axis = bent.text("axis", "vertical", BEND_AXES)
+    bent.refuse_leftovers()
+    return radius, axis
+
+
+def _two_lengths(table: Table, key: str, value: Any) -> tuple[float, float]:
+    if not isinstance(value, list) or len(value) != 2:
+        raise DesignError(
+            f"{table.place(key)} is {value!r}; it must be two lengths, right and up, "
+            'for example ["0.3 mm", "0.2 mm"].'
+        )
+    return length_mm(value[0], table.place(key)), length_mm(value[1], table.place(key))
