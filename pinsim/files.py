@@ -10,6 +10,7 @@ from typing import Any, BinaryIO
 import numpy as np
 from numpy.typing import NDArray
 
+from pinsim.colour import srgb_to_linear
 from pinsim.errors import OutputError
 
 PICTURE_SUFFIXES = (".png", ".jpg", ".jpeg", ".tif", ".tiff")
@@ -84,7 +85,9 @@ def write_whole(path: Path, write: Callable[[BinaryIO], None], *, overwrite: boo
         raise OutputError(f"{path} cannot be written: {problem.strerror}.") from None
     part = Path(name)
     try:
-        with os.fdopen(handle, "wb") as file:
+        os.close(handle)
+        # Opened by its name, as TIFF writers ask an open file for its name.
+        with part.open("wb") as file:
             write(file)
         umask = os.umask(0)
         os.umask(umask)
@@ -115,12 +118,22 @@ def _place_new(part: Path, path: Path) -> None:
         part.rename(path)
 
 
-@lru_cache(maxsize=1)
-def srgb_profile() -> bytes:
-    """Return the sRGB colour profile that every picture is tagged with."""
-    from PIL import ImageCms
+@lru_cache(maxsize=2)
+def srgb_profile(*, grey: bool = False) -> bytes:
+    """Return the sRGB colour profile that every picture is tagged with; grey : for one channel."""
+    if grey:
+        import imagecodecs
 
-    profile = bytearray(ImageCms.ImageCmsProfile(ImageCms.createProfile("sRGB")).tobytes())
+        # Untagged grey is shown by other curves; this has the curve and the white of sRGB.
+        curve = np.round(srgb_to_linear(np.linspace(0.0, 1.0, 1024)) * 65535.0).astype(np.uint16)
+        made = imagecodecs.cms_profile(
+            "gray", whitepoint=[0.3127, 0.3290, 1.0], transferfunction=curve
+        )
+    else:
+        from PIL import ImageCms
+
+        made = ImageCms.ImageCmsProfile(ImageCms.createProfile("sRGB")).tobytes()
+    profile = bytearray(made)
     # The header carries the moment of making; fixed, so that equal pictures are equal files.
     profile[24:36] = bytes.fromhex("07ea00010001000000000000")
     return bytes(profile)
@@ -143,6 +156,7 @@ def encode_picture(
     from PIL import Image, PngImagePlugin
 
     image = Image.fromarray(codes)
+    profile = srgb_profile(grey=image.mode == "L")
     if suffix == ".png":
         text = PngImagePlugin.PngInfo()
         text.add_text("Description", description)
@@ -150,7 +164,7 @@ def encode_picture(
             file,
             "PNG",
             dpi=(dpi, dpi),
-            icc_profile=srgb_profile() if image.mode == "RGB" else None,
+            icc_profile=profile,
             pnginfo=text,
             compress_level=4,
         )
@@ -160,7 +174,7 @@ def encode_picture(
         quality=95,
         subsampling=0,  # 4:4:4: colour edges stay where the film has them
         dpi=(dpi, dpi),
-        icc_profile=srgb_profile() if image.mode == "RGB" else None,
+        icc_profile=profile,
         comment=description,
     )
 
@@ -171,14 +185,14 @@ def write_tiff(file: BinaryIO, data: NDArray[Any], *, dpi: float, description: s
 
     coloured = data.ndim == 3
     extra: dict[str, Any] = {}
-    if coloured and data.dtype != np.float32:
-        extra["iccprofile"] = srgb_profile()
+    if data.dtype != np.float32:
+        extra["iccprofile"] = srgb_profile(grey=not coloured)
     # A tag of a TIFF holds ASCII only; names of places may hold anything.
     description = description.encode("ascii", "backslashreplace").decode()
     iio.imwrite(
         file,
         data,
-        plugin="tifffile_v3",
+        plugin="tifffile",
         extension=".tif",
         photometric="rgb" if coloured else "minisblack",
         compression="zlib",

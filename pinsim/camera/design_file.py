@@ -18,8 +18,12 @@ from pinsim.units import length_mm
 def read_design(path: str | Path) -> Camera:
     """Read a design from a TOML file, or from sample:NAME."""
     file = resolve(path, "camera", DesignError)
-    table = Table(read_toml(file, DesignError, "camera design"), str(file), DesignError)
-    return _camera(table, file.parent)
+    values = read_toml(file, DesignError, "camera design")
+    if "photo" in values and "focal_length" not in values:
+        raise DesignError(
+            f"{file} is a scene file, not a camera design; the scene comes first, then the camera."
+        )
+    return _camera(Table(values, str(file), DesignError), file.parent)
 
 
 def _camera(top: Table, folder: Path) -> Camera:
@@ -85,6 +89,7 @@ def _film(table: Table) -> tuple[Film, str]:
             if table.has("width") or table.has("height"):
                 raise DesignError("frame and width or height exclude each other; keep one of them.")
         else:
+            table.refuse_slip("frame")
             width = length_mm(
                 table.need("width", '"56 mm"  (or frame = "6x6")'), table.place("width")
             )

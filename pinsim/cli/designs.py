@@ -121,7 +121,8 @@ def _film(text: str | None, portrait: bool | None, present: Film) -> Film:
         if portrait:
             sides = min(sides), max(sides)
         film = Film(width_mm=sides[0], height_mm=sides[1])
-    return replace(film, shift_right_mm=present.shift_right_mm, shift_up_mm=present.shift_up_mm)
+    # Another frame lies where the design's own film lies, bent as it is.
+    return replace(present, width_mm=film.width_mm, height_mm=film.height_mm, frame=film.frame)
 
 
 def default_output(stem: str, suffix: str = ".png") -> Path:

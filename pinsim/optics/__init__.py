@@ -14,8 +14,8 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from pinsim.optics.falloff import flat_falloff, plate_transmission
-    from pinsim.optics.film_transfer import OpticalCamera, film_otf, ray_otf
     from pinsim.optics.film_surface import ChiefRays, FilmSurface
+    from pinsim.optics.film_transfer import OpticalCamera, film_otf, ray_otf
     from pinsim.optics.opening import Ellipse, Opening, Slit, Traced
     from pinsim.optics.round_hole import overlap_otf, round_otf, round_psf
     from pinsim.optics.sharpness import (

@@ -13,8 +13,8 @@ from numpy.typing import NDArray
 from pinsim.camera import Camera
 from pinsim.errors import DesignError, out_of_range
 from pinsim.material import LONGEST_NM, SHORTEST_NM, Material
-from pinsim.optics import finest_detail
-from pinsim.optics.round_hole import overlap_otf
+from pinsim.optics import Ellipse, finest_detail, ray_otf
+from pinsim.render.kernels import FilmRange, Kernels, fewer_wavelengths, prepared
 from pinsim.scene import DistanceMap, Scene
 
 Array = NDArray[np.float64]
@@ -32,10 +32,6 @@ HEADROOM = 1.06
 TAIL_SHARE = 3e-3
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
-# Knots of a tabulated transfer function per cycle across the shadow; linear between them within 1e-5.
-KNOTS_PER_SHADOW = 150.0
-MAX_LAYERS = 24
-LAYER_STEP = 0.05
 MAX_GRID_PIXELS = 60_000_000
 MAX_WIDTH_PX = 20_000
 
@@ -45,7 +41,8 @@ class RenderPlan:
     """What will be rendered, at which sampling, for which distances.
 
     pitch_mm : the grid's; shape : rows and columns of the frame; padded : of the grid with its
-    margins; margin : rows above and columns left of the frame. distances_mm : one for each layer.
+    margins; margin : rows above and columns left of the frame. distances_mm : nearest and farthest.
+    kernels : how the hole draws over the film and over these distances.
     averaged : the grid is coarser than the film image needs, so each pixel shows its own mean.
     """
 
@@ -55,7 +52,8 @@ class RenderPlan:
     shape: tuple[int, int]
     padded: tuple[int, int]
     margin: tuple[int, int]
-    distances_mm: tuple[float, ...]
+    distances_mm: tuple[float, float]
+    kernels: Kernels
     averaged: bool
     natural_pitch_mm: float
     notes: tuple[str, ...] = ()
@@ -79,41 +77,64 @@ class RenderPlan:
         return slice(top, top + self.shape[0]), slice(left, left + self.shape[1])
 
 
-def band_tables(
-    camera: Camera, material: Material, distance_mm: float, top_frequency: float
-) -> tuple[Array, Array]:
-    """Return transfer functions against frequency for every channel and photo band.
-
-    Returns frequencies (n,), cycles/mm, evenly spaced from 0 to top_frequency, and
-    tables (channels, 3, n): the channel's exposure per unit of the photo's red, green and blue.
-    Bands that a channel does not record are zero.
-    """
-    z, d = camera.focal_length_mm, camera.hole.diameter_mm
-    shadow_mm = d * (1.0 + z / distance_mm)
-    count = max(64, math.ceil(top_frequency * shadow_mm * KNOTS_PER_SHADOW))
-    frequency = np.linspace(0.0, top_frequency, count)
-    phase = (1.0 + z / distance_mm) * frequency
-    tables = np.empty((len(material.channels), 3, count))
-    for row, channel in zip(tables, material.channels, strict=True):
-        shift = np.outer(channel.wavelengths_nm * (1e-6 * z), frequency)
-        otf = overlap_otf(shift, np.broadcast_to(phase, shift.shape), diameter_mm=d)
-        row[...] = channel.weights.T @ otf
-    return frequency, tables
+def _film_points(camera: Camera) -> list[tuple[float, float]]:
+    """Return film points where the finest detail of the frame may lie: the middle, edges, a corner."""
+    film = camera.film
+    ends_u = [film.shift_right_mm + side * 0.5 * film.width_mm for side in (-1.0, 1.0)]
+    ends_v = [film.shift_up_mm + side * 0.5 * film.height_mm for side in (-1.0, 1.0)]
+    u = min(max(0.0, ends_u[0]), ends_u[1])
+    v = min(max(0.0, ends_v[0]), ends_v[1])
+    far_u, far_v = max(ends_u, key=abs), max(ends_v, key=abs)
+    if camera.surface.flat:
+        return [(u, v)]  # on flat film nothing is finer than nearest to the axis
+    return [(u, v), (far_u, v), (u, far_v), (far_u, far_v)]
 
 
-def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> float:
-    """Return the frequency above which no channel has anything to show, cycles/mm."""
-    z, d = camera.focal_length_mm, camera.hole.diameter_mm
+def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tuple[float, float]:
+    """Return the frequency above which no channel has anything to show, and where all ends."""
+    opening = camera.opening
+    angle = np.pi * np.arange(4) / 4.0
+    directions = np.stack([np.cos(angle), np.sin(angle)], axis=-1)
+    if isinstance(opening, Ellipse) and camera.surface.flat:
+        directions = directions[::2]
     shortest_mm = 1e-6 * min(float(c.wavelengths_nm.min()) for c in material.channels)
-    shadow_mm = d * (1.0 + z / distance_mm)
-    # Geometric blur has ended when the jinc's envelope, 1.6/(pi x)^1.5, has.
-    ended = (1.6 / NEGLIGIBLE_OTF) ** (2.0 / 3.0) / (math.pi * shadow_mm)
-    top = min(1.01 * d / (shortest_mm * z), 1.05 * ended)
-    frequency, tables = band_tables(camera, material, distance_mm, top)
-    strongest = np.abs(tables.sum(axis=1)).max(axis=0)
-    seen = float(frequency[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
-    end = float(frequency[np.flatnonzero(strongest > ENDED_OTF)[-1]])
-    return end if end < END_IS_NEAR * seen and end < 0.999 * top else seen
+    seen, end = 0.0, 0.0
+    for point in _film_points(camera):
+        rays = camera.surface.chief_rays(*point)
+        if float(rays.falloff) <= 0.0:
+            continue
+        wave = rays.focus(distance_mm) @ rays.shift
+        finest_shift = float(np.linalg.svd(rays.shift, compute_uv=False)[-1])
+        finest_wave = float(np.linalg.svd(wave, compute_uv=False)[-1])
+        # Geometric blur has ended when the jinc's envelope, 1.6/(pi x)^1.5, has.
+        ended = (1.6 / NEGLIGIBLE_OTF) ** (2.0 / 3.0) / math.pi
+        top = min(
+            1.01 * opening.width_mm / (shortest_mm * finest_shift),
+            1.05 * ended / (camera.hole.diameter_mm * finest_wave),
+        )
+        radius = np.linspace(0.0, top, 400)
+        frequency = (radius[:, None, None] * directions).reshape(-1, 2)
+        strongest = np.zeros(radius.size)
+        for channel in material.channels:
+            light = fewer_wavelengths(channel.light, 5)
+            total: Array = np.zeros(len(frequency))
+            for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
+                values = ray_otf(
+                    frequency,
+                    rays=rays,
+                    opening=opening,
+                    plate_thickness_mm=0.0,
+                    distance_mm=distance_mm,
+                    wavelength_nm=float(wavelength),
+                )
+                total = total + share * values
+            strongest = np.maximum(strongest, np.abs(total).reshape(radius.size, -1).max(axis=1))
+        here = float(radius[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
+        last = float(radius[np.flatnonzero(strongest > ENDED_OTF)[-1]])
+        if last < END_IS_NEAR * here and last < 0.999 * top:
+            here = last
+        seen, end = max(seen, here), max(end, top)
+    return seen, end
 
 
 def _good_length(least: int) -> int:
@@ -129,21 +150,11 @@ def _good_length(least: int) -> int:
     return best
 
 
-def _layers(scene: Scene, focal_length_mm: float) -> tuple[float, ...]:
-    """Return the distances for which kernels are made; only m = 1 + z/zo matters to a kernel."""
+def _distances(scene: Scene) -> tuple[float, float]:
+    """Return the nearest and the farthest distance of a scene, mm."""
     if not isinstance(scene.distance, DistanceMap):
-        return (scene.distance,)
-    codes = scene.distance.codes
-    nearest = scene.distance.nearest_mm
-    if math.isinf(nearest):
-        return (math.inf,)
-    farthest = math.inf if (codes == 0).any() else float(codes.max()) * scene.distance.step_mm
-    low, high = focal_length_mm / farthest, focal_length_mm / nearest
-    # Even steps of the shadow's size; between two layers a point is shared in proportion.
-    steps = math.ceil(math.log((1.0 + high) / (1.0 + low)) / math.log1p(LAYER_STEP))
-    count = min(MAX_LAYERS, 1 + max(steps, 0))
-    scale = np.geomspace(1.0 + low, 1.0 + high, count)
-    return tuple(math.inf if m <= 1.0 else float(focal_length_mm / (m - 1.0)) for m in scale)
+        return scene.distance, scene.distance
+    return scene.distance.nearest_mm, scene.distance.farthest_mm
 
 
 def make_plan(
@@ -165,8 +176,8 @@ def make_plan(
             )
         material = material.at(wavelength_nm)
     film = camera.film
-    layers = _layers(scene, camera.focal_length_mm)
-    limit = _detail_limit(camera, material, max(layers))
+    nearest, farthest = _distances(scene)
+    limit, end = _detail_limit(camera, material, farthest)
     natural = 0.5 / (HEADROOM * limit)
     notes = []
     least = math.sqrt(film.width_mm * film.height_mm / MAX_GRID_PIXELS)
@@ -181,7 +192,15 @@ def make_plan(
     columns = max(1, math.ceil(film.width_mm / pitch - 1e-9))
     pitch = film.width_mm / columns
     rows = max(1, round(film.height_mm / pitch))
-    padded, margin = _with_margins(camera, layers, pitch, (rows, columns), material)
+    padded, margin = _with_margins(camera, nearest, pitch, (rows, columns), material)
+    z = camera.focal_length_mm
+    # What lies beyond the frame is drawn as at its edge, a blur's width farther.
+    beyond = 2.0 * camera.hole.greatest_mm * (1.0 + z / nearest)
+    film_range = FilmRange(
+        u_mm=_reach(film.shift_right_mm, film.width_mm, beyond),
+        v_mm=_reach(film.shift_up_mm, film.height_mm, beyond),
+        scale=(1.0 + z / farthest, 1.0 + z / nearest),
+    )
     return RenderPlan(
         camera=camera,
         material=material,
@@ -189,16 +208,25 @@ def make_plan(
         shape=(rows, columns),
         padded=padded,
         margin=margin,
-        distances_mm=layers,
+        distances_mm=(nearest, farthest),
+        kernels=prepared(
+            camera, wavelength_nm, film_range, min(end, 1.0001 * math.sqrt(2.0) * HEADROOM * limit)
+        ),
         averaged=pitch > 1.001 * natural,
         natural_pitch_mm=natural,
         notes=tuple(notes),
     )
 
 
+def _reach(shift_mm: float, side_mm: float, beyond_mm: float) -> tuple[float, float]:
+    """Return the ends of a side of the frame, a little beyond."""
+    half = 0.5 * side_mm + beyond_mm
+    return shift_mm - half, shift_mm + half
+
+
 def _with_margins(
     camera: Camera,
-    layers: tuple[float, ...],
+    nearest_mm: float,
     pitch_mm: float,
     shape: tuple[int, int],
     material: Material,
@@ -209,7 +237,7 @@ def _with_margins(
     # Share 2 lambda z / (pi^2 d r) of a point's light lies beyond r: half the slope of the
     # transfer function at zero, which no focus changes.
     tail_mm = 2.0 * longest_mm * z / (math.pi**2 * d * TAIL_SHARE)
-    shadow_mm = d * (1.0 + z / min(layers))
+    shadow_mm = camera.hole.greatest_mm * (1.0 + z / nearest_mm)
     # At most half the frame beyond each side: past that a tail this faint is cheaper imagined.
     widest = pitch_mm * max(0.25 * (shape[0] + shape[1]), CHEAP_MARGIN_PX)
     reach_px = math.ceil((min(tail_mm, widest) + shadow_mm) / pitch_mm) + 8
@@ -228,7 +256,7 @@ def coarse_photo_note(scene: Scene, plan: RenderPlan) -> str | None:
         diameter_mm=camera.hole.diameter_mm,
         focal_length_mm=camera.focal_length_mm,
         light=plan.material.light,
-        distance_mm=max(plan.distances_mm),
+        distance_mm=plan.distances_mm[1],
         samples=200,
     )
     blur_mm = 1.0 / detail

@@ -39,6 +39,13 @@ class DistanceMap:
         return np.asarray(inverse, np.float32)
 
     @property
+    def farthest_mm(self) -> float:
+        """The longest distance in the map; infinity when any part is infinitely far."""
+        if (self.codes == 0).any():
+            return math.inf
+        return float(self.codes.max()) * self.step_mm
+
+    @property
     def nearest_mm(self) -> float:
         """The shortest distance in the map; infinity when there is none."""
         seen = self.codes[self.codes > 0]

@@ -1,0 +1,387 @@
+"""How the hole draws everywhere on the film at once: a few kernels and where each is at work.
+
+A transfer function changes smoothly over the film and with distance. It is sampled at some tens of
+film points, and the samples are written as one mean and a sum of modes,
+
+    OTF(point, nu) = mean(nu) + sum_r field_r(point) mode_r(nu),
+
+by a singular value decomposition weighted like the detail of ordinary scenes. A picture is then the
+sum of whole-frame convolutions of the scene, each weighted by a smooth field: no tiles, no seams, and
+long tails stay. Kernels depend on the design and on the range of distances, not on the scene or
+the grid, and are prepared once for each design.
+"""
+
+import math
+from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pinsim.camera import Camera
+from pinsim.material import Channel
+from pinsim.optics import ChiefRays, Ellipse, Light, ray_otf
+
+Array = NDArray[np.float64]
+Values = NDArray[np.float64] | NDArray[np.complex128]
+
+# The modes kept leave at most these errors at any film point: rms of a picture with the contrast of
+# ordinary scenes (0.2 of white, amplitude falling as 1/nu), and of any single frequency.
+PICTURE_RMS = 3e-4
+SINGLE_OTF = 1e-2
+SCENE_VARIANCE = 0.04
+MOST_MODES = 48
+# Directions of film frequency over half a turn; a multiple of four, so that mirror images and
+# turned copies of a kernel fall on the same directions.
+DIRECTIONS = 16
+# Wavelengths in the variation over the film; the mean has all of the band's own.
+FEW_WAVELENGTHS = 4
+# A film point that sees less of the hole than this through a thick plate has the kernel of a point
+# nearer to the axis: next to nothing is drawn there, by a sliver that no quadrature resolves.
+LEAST_CLEAR = 0.03
+
+_THREADS = 2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FilmRange:
+    """The film points and distances that kernels are prepared for.
+
+    u_mm, v_mm : lowest and highest film coordinate. scale : lowest and highest m = 1 + z/zo.
+    """
+
+    u_mm: tuple[float, float]
+    v_mm: tuple[float, float]
+    scale: tuple[float, float]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class BandKernels:
+    """The kernels of one film channel for the light of one photo band.
+
+    share : of the channel's exposure by a white scene. radii : (n,), Chebyshev-Lobatto nodes of |nu|
+    from 0 to the end, cycles/mm. mean : (n, directions), modes : (modes, n, directions), over half a
+    turn of directions, from +u towards +v; the other half is the complex conjugate.
+    fields : (modes, u, v, m), Chebyshev coefficients over the FilmRange. errors : (modes + 1, 2),
+    what the first 0, 1, ... modes leave: rms of a picture, and of any single frequency.
+    """
+
+    channel: int
+    band: int
+    share: float
+    radii: Array
+    mean: Values
+    modes: Values
+    fields: Array
+    errors: Array
+
+    def modes_for(self, picture_rms: float, single_otf: float) -> int:
+        """Return how many modes keep both errors within bounds; all of them if none do."""
+        good = np.flatnonzero((self.errors <= [picture_rms, single_otf]).all(axis=1))
+        return int(good[0]) if good.size else len(self.modes)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Kernels:
+    """All kernels of a design over a range of film points and distances."""
+
+    range: FilmRange
+    bands: tuple[BandKernels, ...]
+
+
+def fewer_wavelengths(light: Light, count: int) -> Light:
+    """Return at most `count` wavelengths that stand for a light: its own Gauss quadrature.
+
+    Exact for whatever varies with wavelength like a polynomial of degree 2 count - 1. Golub and
+    Welsch, Math. Comp. 23 (1969) 221, on the light's discrete measure by the Lanczos recurrence.
+    """
+    if light.wavelengths_nm.size <= count:
+        return light
+    middle = float(light.shares @ light.wavelengths_nm)
+    x = light.wavelengths_nm - middle
+    previous, current = np.zeros_like(x), np.sqrt(light.shares)
+    diagonal, beside = np.zeros(count), np.zeros(count)
+    for k in range(count):
+        moved = x * current - (beside[k - 1] * previous if k else 0.0)
+        diagonal[k] = current @ moved
+        moved = moved - diagonal[k] * current
+        beside[k] = np.linalg.norm(moved)
+        previous, current = current, moved / beside[k]
+    jacobi = np.diag(diagonal) + np.diag(beside[:-1], 1) + np.diag(beside[:-1], -1)
+    nodes, vectors = np.linalg.eigh(jacobi)
+    shares = vectors[0] ** 2
+    return Light(wavelengths_nm=nodes + middle, shares=shares / shares.sum())
+
+
+def chebyshev_nodes(count: int, low: float, high: float) -> Array:
+    """Return `count` nodes of an interval, symmetric to the last bit about its middle."""
+    angle = np.pi * (np.arange(count) + 0.5) / count
+    unit = 0.5 * (np.cos(angle) - np.cos(angle)[::-1])
+    return np.asarray(0.5 * (low + high) + 0.5 * (high - low) * unit)
+
+
+def chebyshev_values(count: int, low: float, high: float, place: Array) -> NDArray[np.float32]:
+    """Return the first `count` Chebyshev polynomials at places, (places, count); clamped outside."""
+    if count == 1 or high <= low:
+        return np.ones((*place.shape, count), np.float32) * (np.arange(count) == 0)
+    unit = np.clip((2.0 * place - low - high) / (high - low), -1.0, 1.0)
+    return np.polynomial.chebyshev.chebvander(unit, count - 1).astype(np.float32)
+
+
+def _nodes_for(tangent: float) -> int:
+    """Return how many Chebyshev nodes settle the change of kernels out to a field tangent."""
+    return 1 if tangent < 0.01 else min(17, 2 * math.ceil(1.0 + 5.0 * tangent) + 1)
+
+
+class _Sampler:
+    """Evaluates transfer functions at film points on the polar grid of frequencies."""
+
+    def __init__(self, camera: Camera, radii: Array, light: Light) -> None:
+        angle = np.pi * np.arange(DIRECTIONS) / DIRECTIONS
+        directions = np.stack([np.cos(angle), np.sin(angle)], axis=-1)
+        self._frequency = (radii[:, None, None] * directions).reshape(-1, 2)
+        self._shape = (radii.size, DIRECTIONS)
+        self._camera = camera
+        self._light = light
+
+    def at(self, u_mm: float, v_mm: float, scale: float, light: Light | None = None) -> Values:
+        """Return (radii, directions) at a film point, for objects at m = scale."""
+        camera = self._camera
+        rays = _clear_rays(camera, u_mm, v_mm)
+        distance = math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0)
+        chosen = light or self._light
+        total: Values = np.zeros(len(self._frequency))
+        for wavelength, share in zip(chosen.wavelengths_nm, chosen.shares, strict=True):
+            total = total + share * ray_otf(
+                self._frequency,
+                rays=rays,
+                opening=camera.opening,
+                plate_thickness_mm=camera.plate_thickness_mm,
+                distance_mm=distance,
+                wavelength_nm=float(wavelength),
+            )
+        return total.reshape(self._shape)
+
+
+def _clear_rays(camera: Camera, u_mm: float, v_mm: float) -> ChiefRays:
+    """Return the ray to a film point, or to the nearest one towards the axis that is lit."""
+    for _ in range(60):
+        rays = camera.surface.chief_rays(u_mm, v_mm)
+        if float(rays.falloff) > 0.0:
+            clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
+            if float(clear) >= LEAST_CLEAR:
+                return rays
+        u_mm, v_mm = 0.95 * u_mm, 0.95 * v_mm
+    return camera.surface.chief_rays(0.0, 0.0)
+
+
+def prepare(
+    camera: Camera, channels: tuple[Channel, ...], film_range: FilmRange, top_frequency: float
+) -> Kernels:
+    """Return the kernels of a design. top_frequency : the end of every band, cycles/mm."""
+    z = camera.focal_length_mm
+    u, v = film_range.u_mm, film_range.v_mm
+    corners = camera.surface.chief_rays(
+        np.array([u[0], u[1], 0.0, 0.0]), np.array([0.0, 0.0, v[0], v[1]])
+    )
+    tangent = np.abs(corners.tangent)
+    low, high = film_range.scale
+    count_m = 1 if high / low < 1.001 else min(9, 2 + math.ceil(8.0 * (high / low - 1.0)))
+    nodes = (
+        chebyshev_nodes(_nodes_for(float(tangent[:2].max())), *u),
+        chebyshev_nodes(_nodes_for(float(tangent[2:].max())), *v),
+        chebyshev_nodes(count_m, low, high),
+    )
+    # Six samples to each turn of the shadow's own phase, and the rest for the shape of the curve.
+    turns = top_frequency * camera.hole.greatest_mm * high
+    count = 40 + math.ceil(6.0 * turns)
+    radii = 0.5 * top_frequency * (1.0 - np.cos(np.pi * np.arange(count) / (count - 1)))
+    jobs = [
+        (
+            number,
+            band,
+            float(weights.sum()),
+            Light(wavelengths_nm=channel.wavelengths_nm, shares=weights / weights.sum()),
+        )
+        for number, channel in enumerate(channels)
+        for band, weights in enumerate(channel.weights.T)
+        if weights.sum() > 1e-6
+    ]
+    with ThreadPoolExecutor(_THREADS) as pool:
+        bands = list(
+            pool.map(
+                lambda job: _band(camera, nodes, radii, *job, frame_mm=max(u[1] - u[0], z * 0.1)),
+                jobs,
+            )
+        )
+    return Kernels(range=film_range, bands=tuple(bands))
+
+
+def _band(
+    camera: Camera,
+    nodes: tuple[Array, Array, Array],
+    radii: Array,
+    channel: int,
+    band: int,
+    share: float,
+    light: Light,
+    *,
+    frame_mm: float,
+) -> BandKernels:
+    sampler = _Sampler(camera, radii, fewer_wavelengths(light, FEW_WAVELENGTHS))
+    samples = _samples(camera, nodes, sampler)
+    # The axis, or the point nearest to it, tells what the few wavelengths leave out.
+    near = tuple(float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])
+    place = (near[0], near[1], float(nodes[2][-1]))
+    missing = sampler.at(*place, light=light) - sampler.at(*place)
+    flat = samples.reshape(samples.shape[0] * samples.shape[1] * samples.shape[2], -1)
+    middle = flat.mean(axis=0)
+    modes, fields, errors = _decompose(flat - middle, radii, frame_mm)
+    shape = (radii.size, DIRECTIONS)
+    count = len(modes)
+    return BandKernels(
+        channel=channel,
+        band=band,
+        share=share,
+        radii=radii,
+        mean=middle.reshape(shape) + missing,
+        modes=modes.reshape(count, *shape),
+        fields=_coefficients(fields.reshape(count, *samples.shape[:3])),
+        errors=errors,
+    )
+
+
+def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
+    """Return transfer functions at all nodes, (u, v, m, radii, directions), mirror images shared."""
+    mirrored = camera.opening.mirrored
+    opening = camera.opening
+    round_on_flat = (
+        isinstance(opening, Ellipse) and opening.right_mm == opening.up_mm and camera.surface.flat
+    )
+    seen: dict[tuple[float, float, float], Values] = {}
+
+    def at(u: float, v: float, m: float) -> Values:
+        if (u, v, m) not in seen:
+            seen[u, v, m] = sampler.at(u, v, m)
+        return seen[u, v, m]
+
+    turned = np.arange(DIRECTIONS)
+    result = []
+    for u in nodes[0]:
+        for v in nodes[1]:
+            for m in nodes[2]:
+                if not mirrored:
+                    result.append(at(float(u), float(v), float(m)))
+                    continue
+                # Directions of this point's frequencies, as seen from the point whose kernel serves.
+                source = turned if u * v >= 0.0 else -turned
+                first, second = abs(float(u)), abs(float(v))
+                if round_on_flat and first < second:
+                    first, second = second, first
+                    source = DIRECTIONS // 2 - source
+                result.append(at(first, second, float(m))[:, source % DIRECTIONS])
+    return np.stack(result).reshape(*(axis.size for axis in nodes), *result[0].shape)
+
+
+def _decompose(samples: Values, radii: Array, frame_mm: float) -> tuple[Values, Array, Array]:
+    """Return modes (k, frequencies), fields (k, points) and the errors that 0 to k of them leave.
+
+    samples : (points, frequencies). Real and imaginary parts stand side by side, so fields are real.
+    """
+    weight = np.repeat(_scene_power(radii, frame_mm), DIRECTIONS)
+    weight = np.sqrt(weight * SCENE_VARIANCE / weight.sum())
+    weight = np.maximum(weight, 1e-9 * weight.max())
+    parts = [samples.real, samples.imag] if np.iscomplexobj(samples) else [samples]
+    stacked = np.concatenate([part * weight for part in parts], axis=1)
+    # Eigenvectors of the points' covariance: there are far fewer points than frequencies.
+    values, vectors = np.linalg.eigh(stacked @ stacked.T)
+    vectors = vectors[:, ::-1]
+    rest = stacked
+    both = np.concatenate([weight] * len(parts))
+    errors = []
+    for count in range(min(MOST_MODES, vectors.shape[1]) + 1):
+        rms = float(np.sqrt((rest * rest).sum(axis=1)).max())
+        errors.append((rms, float(np.abs(rest / both).max())))
+        if (rms <= PICTURE_RMS and errors[-1][1] <= SINGLE_OTF) or count == vectors.shape[1]:
+            break
+        one = vectors[:, count : count + 1]
+        rest = rest - one @ (one.T @ rest)
+    count = len(errors) - 1
+    chosen = vectors[:, :count]
+    modes = chosen.T @ (stacked / both)
+    half = samples.shape[1]
+    if np.iscomplexobj(samples):
+        modes = modes[:, :half] + 1j * modes[:, half:]
+    return modes, chosen.T, np.array(errors)
+
+
+def _scene_power(radii: Array, frame_mm: float) -> Array:
+    """Return the share of an ordinary scene's contrast around each |nu|: 1/nu^2 in the plane."""
+    ring = np.gradient(radii)
+    bounded = np.maximum(radii, 1.0 / frame_mm)
+    return np.asarray(np.maximum(radii, 0.25 * ring) / bounded**2 * ring)
+
+
+def _coefficients(values: Array) -> Array:
+    """Turn values at Chebyshev nodes, (modes, u, v, m), to Chebyshev coefficients."""
+    for axis in (1, 2, 3):
+        count = values.shape[axis]
+        angle = np.pi * (np.arange(count) + 0.5) / count
+        cosines = np.cos(np.outer(np.arange(count), angle)) * (2.0 / count)
+        cosines[0] *= 0.5
+        values = np.moveaxis(np.tensordot(cosines, values, axes=(1, axis)), 0, axis)
+    return values
+
+
+@lru_cache(maxsize=8)
+def _prepared(
+    camera: Camera, wavelength_nm: float | None, film_range: FilmRange, top_frequency: float
+) -> Kernels:
+    material = camera.material if wavelength_nm is None else camera.material.at(wavelength_nm)
+    return prepare(camera, material.channels, film_range, top_frequency)
+
+
+def prepared(
+    camera: Camera, wavelength_nm: float | None, film_range: FilmRange, top_frequency: float
+) -> Kernels:
+    """Return kernels as `prepare` does, once for each design and range."""
+    return _prepared(camera, wavelength_nm, film_range, top_frequency)
+
+
+def polar_reader(band: BandKernels) -> Callable[[Values, Array, Array], Values]:
+    """Return a function that reads tables of the band, (n, directions), at |nu| and direction.
+
+    The tables are made fine first, along radii through their Chebyshev polynomial and along
+    directions through their Fourier series; between the fine points reading is linear.
+    """
+    count = band.radii.size
+    fine = 8 * count
+    top = float(band.radii[-1])
+    unit = np.linspace(-1.0, 1.0, fine)
+    nodes = -np.cos(np.pi * np.arange(count) / (count - 1))
+    vander = np.polynomial.chebyshev.chebvander
+    along = vander(unit, count - 1) @ np.linalg.inv(vander(nodes, count - 1))
+    around = 12 * DIRECTIONS  # over a full turn
+
+    def read(table: Values, radius: Array, angle: Array) -> Values:
+        whole = np.concatenate([table, np.conj(table)], axis=1)
+        spectrum = np.fft.fft(whole, axis=1)
+        wide = np.zeros((count, around), np.complex128)
+        half = DIRECTIONS
+        wide[:, :half] = spectrum[:, :half]
+        wide[:, -half:] = spectrum[:, half:]
+        dense = along @ (np.fft.ifft(wide, axis=1) * (around / (2 * DIRECTIONS)))
+        if not np.iscomplexobj(table):
+            dense = dense.real
+        dense = np.concatenate([dense, dense[:, :1]], axis=1)
+        r = np.minimum(radius * ((fine - 1) / top), fine - 1.000001)
+        a = np.mod(angle / (2.0 * np.pi), 1.0) * around
+        r0, a0 = r.astype(np.intp), np.minimum(a.astype(np.intp), around - 1)
+        dr, da = r - r0, a - a0
+        near = dense[r0, a0] * (1.0 - da) + dense[r0, a0 + 1] * da
+        far = dense[r0 + 1, a0] * (1.0 - da) + dense[r0 + 1, a0 + 1] * da
+        return np.where(radius <= top, near * (1.0 - dr) + far * dr, 0.0)
+
+    return read
