@@ -96,14 +96,9 @@ def figures(
                 else math.nan,
             )
         )
-    tangent_square = math.tan(math.radians(camera.corner_deg)) ** 2
-    corner = float(optics.flat_falloff(tangent_square)) * float(
-        optics.plate_transmission(
-            tangent_square,
-            diameter_mm=diameter,
-            plate_thickness_mm=camera.hole.plate_thickness_mm,
-        )
-    )
+    rays = camera.rays_to(camera.far_corner)
+    clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
+    corner = float(rays.falloff[0] * clear[0])
     return Figures(
         name=camera.name,
         hole_mm=diameter,

@@ -5,6 +5,7 @@ film.py         the film: its frame, where it lies, how it is bent
 frames.py       film frames by name
 camera.py       the Camera: hole, distance to the film, film, material
 design_file.py  TOML to Camera
+design_text.py  Camera to TOML
 """
 
 from pinsim.camera.camera import TONES, Camera, Tone

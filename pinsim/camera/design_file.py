@@ -8,10 +8,11 @@ from typing import Any
 from pinsim.camera.camera import TONES, Camera
 from pinsim.camera.film import BEND_AXES, Film, named_film
 from pinsim.camera.hole import SHAPES, Hole
-from pinsim.errors import DesignError
+from pinsim.errors import DesignError, SceneError
 from pinsim.material import DEFAULT_MATERIAL, material
 from pinsim.samples import resolve
 from pinsim.tables import Table, read_toml
+from pinsim.tracing.scale import Reference, Scale
 from pinsim.units import length_mm
 
 
@@ -75,7 +76,62 @@ def _hole(table: Table, folder: Path) -> Hole:
 
 
 def _traced(table: Table, folder: Path, thickness: float) -> Hole:
-    raise DesignError(f"{table.place('shape')}: traced holes come with the next step.")
+    from pinsim.tracing.measure import POLARITIES, SEEN_FROM, trace_hole
+
+    image = table.need("image", '"hole.png"')
+    if not isinstance(image, str):
+        raise DesignError(f"{table.place('image')} is {image!r}; it must be a file name as text.")
+    scale = _scale(table)
+    seen_from = table.text("seen_from", "behind", SEEN_FROM)
+    polarity = table.text("polarity", "auto", POLARITIES)
+    diameter = None
+    if table.has("diameter"):
+        diameter = length_mm(table.take("diameter"), table.place("diameter"))
+    table.refuse_leftovers()  # before the scan is read: a misspelt scale looks like a missing one
+    try:
+        hole = trace_hole(
+            folder / image,
+            scale=scale,
+            diameter_mm=diameter,
+            polarity=polarity,
+            seen_from=seen_from,
+        )
+    except SceneError as error:
+        raise DesignError(f"{table.place('image')}: {error}") from None
+    return Hole.traced(hole.opening, plate_thickness_mm=thickness)
+
+
+def _scale(table: Table) -> Scale:
+    pixel_size = dpi = reference = None
+    if table.has("pixel_size"):
+        pixel_size = length_mm(table.take("pixel_size"), table.place("pixel_size"))
+    if table.has("dpi"):
+        dpi = _number(table.take("dpi"), table.place("dpi"), "4800")
+    if table.has("reference"):
+        inner = Table(table.take("reference"), table.place("reference"), DesignError)
+        reference = Reference(
+            start_px=_point(inner, "from", "[12, 40]"),
+            stop_px=_point(inner, "to", "[980, 44]"),
+            length_mm=length_mm(inner.need("length", '"10 mm"'), inner.place("length")),
+        )
+        inner.refuse_leftovers()
+    return Scale(pixel_size_mm=pixel_size, dpi=dpi, reference=reference)
+
+
+def _number(value: Any, place: str, example: str) -> float:
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise DesignError(f"{place} is {value!r}; it must be a number, for example {example}.")
+    return float(value)
+
+
+def _point(table: Table, key: str, example: str) -> tuple[float, float]:
+    value = table.need(key, example)
+    place = table.place(key)
+    if not isinstance(value, list) or len(value) != 2:
+        raise DesignError(
+            f"{place} is {value!r}; it must be column and row, for example {example}."
+        )
+    return _number(value[0], place, "12"), _number(value[1], place, "40")
 
 
 def _film(table: Table) -> tuple[Film, str]:

@@ -94,6 +94,29 @@ class FilmSurface:
             basis[..., 2, column] = -np.sin(around)
         return basis
 
+    def light(self, u_mm: ArrayLike, v_mm: ArrayLike) -> tuple[Array, Array, Array]:
+        """Return what a whole picture needs of its chief rays, and no more.
+
+        Returns falloff, as in ChiefRays, and the rays' tangents right and up, of the common shape;
+        tangents are 0 where the falloff is.
+        """
+        points = self.points_mm(u_mm, v_mm)
+        x, y, ahead = points[..., 0], points[..., 1], points[..., 2]
+        square = x * x + y * y + ahead * ahead
+        if self.flat:
+            facing = ahead
+        else:
+            bent = np.asarray(u_mm if self.axis == "vertical" else v_mm, np.float64)
+            around = bent / self.bend_radius_mm
+            aside = x if self.axis == "vertical" else y
+            facing = aside * np.sin(around) + ahead * np.cos(around)
+        lit = (ahead > 1e-6 * self.focal_length_mm) & (facing > 0.0)
+        falloff = np.where(
+            lit, self.focal_length_mm**2 * ahead * facing / np.maximum(square, 1e-12) ** 2, 0.0
+        )
+        depth = np.where(lit, ahead, np.inf)
+        return falloff, x / depth, y / depth
+
     def chief_rays(self, u_mm: ArrayLike, v_mm: ArrayLike) -> ChiefRays:
         """Return the rays to film points of any common shape.
 

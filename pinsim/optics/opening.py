@@ -66,8 +66,8 @@ class Ellipse:
 
     def clear_share(self, plate_shift_mm: Array) -> Array:
         """Two equal ellipses apart: the overlap of two circles, after Gardner 1947 (from memory)."""
-        distance = np.linalg.norm(self._on_unit_disc(np.asarray(plate_shift_mm)), axis=-1)
-        return _lens_share(distance)
+        x, y = (np.asarray(plate_shift_mm)[..., k] for k in (0, 1))
+        return _lens_share(np.hypot(x * (2.0 / self.right_mm), y * (2.0 / self.up_mm)))
 
     def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Array:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
@@ -272,10 +272,10 @@ class Traced:
         if clear.shape[0] * zoom > _MOST_CELLS:
             zoom = max(1, _MOST_CELLS // clear.shape[0])
         if zoom > 1:
-            clear = np.kron(clear, np.ones((zoom, zoom)))
+            clear = np.asarray(np.kron(clear, np.ones((zoom, zoom))), np.float64)
             cell = cell / zoom
         n = clear.shape[0]
-        place: Array = (np.arange(n) - 0.5 * (n - 1)) * cell
+        place = np.asarray((np.arange(n) - 0.5 * (n - 1)) * cell)
         x, y = place[None, :], -place[:, None]
         turns = curvature[0, 0] * x * x + curvature[1, 1] * y * y
         phase = turns + (curvature[0, 1] + curvature[1, 0]) * x * y

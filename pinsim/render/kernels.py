@@ -12,10 +12,10 @@ the grid, and are prepared once for each design.
 """
 
 import math
-from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,7 +25,7 @@ from pinsim.material import Channel
 from pinsim.optics import ChiefRays, Ellipse, Light, ray_otf
 
 Array = NDArray[np.float64]
-Values = NDArray[np.float64] | NDArray[np.complex128]
+Values = NDArray[np.inexact[Any]]  # real where the opening is its own mirror image
 
 # The modes kept leave at most these errors at any film point: rms of a picture with the contrast of
 # ordinary scenes (0.2 of white, amplitude falling as 1/nu), and of any single frequency.
@@ -61,34 +61,37 @@ class FilmRange:
 class BandKernels:
     """The kernels of one film channel for the light of one photo band.
 
-    share : of the channel's exposure by a white scene. radii : (n,), Chebyshev-Lobatto nodes of |nu|
-    from 0 to the end, cycles/mm. mean : (n, directions), modes : (modes, n, directions), over half a
-    turn of directions, from +u towards +v; the other half is the complex conjugate.
-    fields : (modes, u, v, m), Chebyshev coefficients over the FilmRange. errors : (modes + 1, 2),
-    what the first 0, 1, ... modes leave: rms of a picture, and of any single frequency.
+    share : of the channel's exposure by a white scene. mean : (n, directions), modes : (modes, n,
+    directions), at the radii of the Kernels and over half a turn of directions, from +u towards
+    +v; the other half is the complex conjugate.
     """
 
     channel: int
     band: int
     share: float
-    radii: Array
     mean: Values
     modes: Values
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Kernels:
+    """All kernels of a design over a range of film points and distances.
+
+    radii : (n,), Chebyshev-Lobatto nodes of |nu| from 0 to the end, cycles/mm. fields : (modes, u, v,
+    m), Chebyshev coefficients over the range, common to all bands. errors : (modes + 1, 2), what
+    the first 0, 1, ... modes leave in any band: rms of a picture, and of any single frequency.
+    """
+
+    range: FilmRange
+    radii: Array
+    bands: tuple[BandKernels, ...]
     fields: Array
     errors: Array
 
     def modes_for(self, picture_rms: float, single_otf: float) -> int:
         """Return how many modes keep both errors within bounds; all of them if none do."""
         good = np.flatnonzero((self.errors <= [picture_rms, single_otf]).all(axis=1))
-        return int(good[0]) if good.size else len(self.modes)
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Kernels:
-    """All kernels of a design over a range of film points and distances."""
-
-    range: FilmRange
-    bands: tuple[BandKernels, ...]
+        return int(good[0]) if good.size else len(self.fields)
 
 
 def fewer_wavelengths(light: Light, count: int) -> Light:
@@ -127,7 +130,11 @@ def chebyshev_values(count: int, low: float, high: float, place: Array) -> NDArr
     if count == 1 or high <= low:
         return np.ones((*place.shape, count), np.float32) * (np.arange(count) == 0)
     unit = np.clip((2.0 * place - low - high) / (high - low), -1.0, 1.0)
-    return np.polynomial.chebyshev.chebvander(unit, count - 1).astype(np.float32)
+    values: NDArray[np.float32]
+    values = np.polynomial.chebyshev.chebvander(unit, count - 1).astype(
+        np.float32
+    )
+    return values
 
 
 def _nodes_for(tangent: float) -> int:
@@ -199,58 +206,46 @@ def prepare(
     count = 40 + math.ceil(6.0 * turns)
     radii = 0.5 * top_frequency * (1.0 - np.cos(np.pi * np.arange(count) / (count - 1)))
     jobs = [
-        (
-            number,
-            band,
-            float(weights.sum()),
-            Light(wavelengths_nm=channel.wavelengths_nm, shares=weights / weights.sum()),
-        )
+        (number, band, float(weights.sum()), channel.wavelengths_nm, weights / weights.sum())
         for number, channel in enumerate(channels)
         for band, weights in enumerate(channel.weights.T)
         if weights.sum() > 1e-6
     ]
+    lights = [Light(wavelengths_nm=job[3], shares=job[4]) for job in jobs]
     with ThreadPoolExecutor(_THREADS) as pool:
-        bands = list(
-            pool.map(
-                lambda job: _band(camera, nodes, radii, *job, frame_mm=max(u[1] - u[0], z * 0.1)),
-                jobs,
-            )
+        sampled = list(pool.map(lambda light: _sampled(camera, nodes, radii, light), lights))
+    frame_mm = max(u[1] - u[0], v[1] - v[0], 0.1 * z)
+    grid = (radii.size, DIRECTIONS)
+    middles = [samples.mean(axis=0) for samples, _ in sampled]
+    apart = [samples - middle for (samples, _), middle in zip(sampled, middles, strict=True)]
+    modes, fields, errors = _decompose(apart, radii, frame_mm)
+    bands = tuple(
+        BandKernels(
+            channel=job[0],
+            band=job[1],
+            share=job[2],
+            mean=middle.reshape(grid) + missing,
+            modes=own.reshape(-1, *grid),
         )
-    return Kernels(range=film_range, bands=tuple(bands))
+        for job, middle, (_, missing), own in zip(jobs, middles, sampled, modes, strict=True)
+    )
+    values = fields.reshape(-1, *(axis.size for axis in nodes))
+    return Kernels(
+        range=film_range, radii=radii, bands=bands, fields=_coefficients(values), errors=errors
+    )
 
 
-def _band(
-    camera: Camera,
-    nodes: tuple[Array, Array, Array],
-    radii: Array,
-    channel: int,
-    band: int,
-    share: float,
-    light: Light,
-    *,
-    frame_mm: float,
-) -> BandKernels:
+def _sampled(
+    camera: Camera, nodes: tuple[Array, Array, Array], radii: Array, light: Light
+) -> tuple[Values, Values]:
+    """Return samples (points, frequencies) for few wavelengths, and what these leave out."""
     sampler = _Sampler(camera, radii, fewer_wavelengths(light, FEW_WAVELENGTHS))
     samples = _samples(camera, nodes, sampler)
-    # The axis, or the point nearest to it, tells what the few wavelengths leave out.
-    near = tuple(float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])
-    place = (near[0], near[1], float(nodes[2][-1]))
-    missing = sampler.at(*place, light=light) - sampler.at(*place)
-    flat = samples.reshape(samples.shape[0] * samples.shape[1] * samples.shape[2], -1)
-    middle = flat.mean(axis=0)
-    modes, fields, errors = _decompose(flat - middle, radii, frame_mm)
-    shape = (radii.size, DIRECTIONS)
-    count = len(modes)
-    return BandKernels(
-        channel=channel,
-        band=band,
-        share=share,
-        radii=radii,
-        mean=middle.reshape(shape) + missing,
-        modes=modes.reshape(count, *shape),
-        fields=_coefficients(fields.reshape(count, *samples.shape[:3])),
-        errors=errors,
-    )
+    # The point nearest to the axis tells what the few wavelengths leave out.
+    near_u, near_v = (float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])
+    scale = float(nodes[2][-1])
+    missing = sampler.at(near_u, near_v, scale, light=light) - sampler.at(near_u, near_v, scale)
+    return samples.reshape(-1, radii.size * DIRECTIONS), missing
 
 
 def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
@@ -285,35 +280,42 @@ def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sample
     return np.stack(result).reshape(*(axis.size for axis in nodes), *result[0].shape)
 
 
-def _decompose(samples: Values, radii: Array, frame_mm: float) -> tuple[Values, Array, Array]:
-    """Return modes (k, frequencies), fields (k, points) and the errors that 0 to k of them leave.
+def _decompose(
+    bands: list[Values], radii: Array, frame_mm: float
+) -> tuple[list[Values], Array, Array]:
+    """Return each band's modes, the fields (modes, points) they share, and the errors left.
 
-    samples : (points, frequencies). Real and imaginary parts stand side by side, so fields are real.
+    bands : (points, frequencies) each. errors as in Kernels. Bands, and real and imaginary parts,
+    stand side by side, so fields are real and common.
     """
     weight = np.repeat(_scene_power(radii, frame_mm), DIRECTIONS)
     weight = np.sqrt(weight * SCENE_VARIANCE / weight.sum())
     weight = np.maximum(weight, 1e-9 * weight.max())
-    parts = [samples.real, samples.imag] if np.iscomplexobj(samples) else [samples]
+    imaginary = any(np.iscomplexobj(samples) for samples in bands)
+    parts = [
+        p for samples in bands for p in ((samples.real, samples.imag) if imaginary else (samples,))
+    ]
     stacked = np.concatenate([part * weight for part in parts], axis=1)
     # Eigenvectors of the points' covariance: there are far fewer points than frequencies.
-    values, vectors = np.linalg.eigh(stacked @ stacked.T)
+    _, vectors = np.linalg.eigh(stacked @ stacked.T)
     vectors = vectors[:, ::-1]
-    rest = stacked
-    both = np.concatenate([weight] * len(parts))
+    rest = stacked.copy()
+    per_band = len(parts) // len(bands) * weight.size
     errors = []
-    for count in range(min(MOST_MODES, vectors.shape[1]) + 1):
-        rms = float(np.sqrt((rest * rest).sum(axis=1)).max())
-        errors.append((rms, float(np.abs(rest / both).max())))
-        if (rms <= PICTURE_RMS and errors[-1][1] <= SINGLE_OTF) or count == vectors.shape[1]:
+    for count in range(vectors.shape[1] + 1):
+        power = (rest * rest).reshape(len(rest), len(bands), per_band).sum(axis=2)
+        single = np.abs(rest.reshape(len(rest), -1, weight.size) / weight).max()
+        errors.append((math.sqrt(float(power.max())), float(single)))
+        good = errors[-1][0] <= PICTURE_RMS and errors[-1][1] <= SINGLE_OTF
+        if good or count in (MOST_MODES, vectors.shape[1]):
             break
         one = vectors[:, count : count + 1]
-        rest = rest - one @ (one.T @ rest)
-    count = len(errors) - 1
-    chosen = vectors[:, :count]
-    modes = chosen.T @ (stacked / both)
-    half = samples.shape[1]
-    if np.iscomplexobj(samples):
-        modes = modes[:, :half] + 1j * modes[:, half:]
+        rest -= one @ (one.T @ rest)
+    chosen = vectors[:, : len(errors) - 1]
+    flat = (chosen.T @ stacked).reshape(chosen.shape[1], len(parts), weight.size) / weight
+    modes: list[Values] = [flat[:, k] for k in range(len(parts))]
+    if imaginary:
+        modes = [modes[2 * k] + 1j * modes[2 * k + 1] for k in range(len(bands))]
     return modes, chosen.T, np.array(errors)
 
 
@@ -350,38 +352,42 @@ def prepared(
     return _prepared(camera, wavelength_nm, film_range, top_frequency)
 
 
-def polar_reader(band: BandKernels) -> Callable[[Values, Array, Array], Values]:
-    """Return a function that reads tables of the band, (n, directions), at |nu| and direction.
+class PolarReader:
+    """Reads tables of the kernels, (n, directions), at any |nu| and direction.
 
     The tables are made fine first, along radii through their Chebyshev polynomial and along
     directions through their Fourier series; between the fine points reading is linear.
     """
-    count = band.radii.size
-    fine = 8 * count
-    top = float(band.radii[-1])
-    unit = np.linspace(-1.0, 1.0, fine)
-    nodes = -np.cos(np.pi * np.arange(count) / (count - 1))
-    vander = np.polynomial.chebyshev.chebvander
-    along = vander(unit, count - 1) @ np.linalg.inv(vander(nodes, count - 1))
-    around = 12 * DIRECTIONS  # over a full turn
 
-    def read(table: Values, radius: Array, angle: Array) -> Values:
+    def __init__(self, radii: Array) -> None:
+        count = radii.size
+        self._count, self._fine = count, 8 * count
+        self._top = float(radii[-1])
+        vander = np.polynomial.chebyshev.chebvander
+        nodes = -np.cos(np.pi * np.arange(count) / (count - 1))
+        fine = vander(np.linspace(-1.0, 1.0, self._fine), count - 1)
+        self._along = fine @ np.linalg.inv(vander(nodes, count - 1))
+
+    def along(self, radial: Array) -> tuple[Array, Array]:
+        """Return fine radii and values of a table without directions, (n,)."""
+        return np.linspace(0.0, self._top, self._fine), self._along @ radial
+
+    def at(self, table: Values, radius: Array, angle: Array) -> Values:
+        """Return the table's values; zero beyond its end."""
+        around = 12 * DIRECTIONS  # over a full turn
         whole = np.concatenate([table, np.conj(table)], axis=1)
         spectrum = np.fft.fft(whole, axis=1)
-        wide = np.zeros((count, around), np.complex128)
-        half = DIRECTIONS
-        wide[:, :half] = spectrum[:, :half]
-        wide[:, -half:] = spectrum[:, half:]
-        dense = along @ (np.fft.ifft(wide, axis=1) * (around / (2 * DIRECTIONS)))
-        if not np.iscomplexobj(table):
-            dense = dense.real
+        wide = np.zeros((self._count, around), np.complex128)
+        wide[:, :DIRECTIONS] = spectrum[:, :DIRECTIONS]
+        wide[:, -DIRECTIONS:] = spectrum[:, DIRECTIONS:]
+        turned = np.fft.ifft(wide, axis=1) * (around / (2 * DIRECTIONS))
+        dense = self._along @ (turned if np.iscomplexobj(table) else turned.real)
         dense = np.concatenate([dense, dense[:, :1]], axis=1)
-        r = np.minimum(radius * ((fine - 1) / top), fine - 1.000001)
+        r = np.minimum(radius * ((self._fine - 1) / self._top), self._fine - 1.000001)
         a = np.mod(angle / (2.0 * np.pi), 1.0) * around
-        r0, a0 = r.astype(np.intp), np.minimum(a.astype(np.intp), around - 1)
+        r0 = r.astype(np.intp)
+        a0 = np.minimum(a.astype(np.intp), around - 1)
         dr, da = r - r0, a - a0
         near = dense[r0, a0] * (1.0 - da) + dense[r0, a0 + 1] * da
         far = dense[r0 + 1, a0] * (1.0 - da) + dense[r0 + 1, a0 + 1] * da
-        return np.where(radius <= top, near * (1.0 - dr) + far * dr, 0.0)
-
-    return read
+        return np.asarray(np.where(radius <= self._top, near * (1.0 - dr) + far * dr, 0.0))

@@ -65,7 +65,13 @@ def preview(
             f"(the film sees {camera.horizontal_view_deg:.0f} deg across, "
             f"the photo {scene.horizontal_view_deg:.0f} deg)"
         )
-    planes = spread(illuminate(view), report=report)
+    view = illuminate(view)
+    if view.unlit_share > 0.0:
+        notes.append(
+            f"{100.0 * view.unlit_share:.1f} % of the frame stays unlit and is drawn black: "
+            "the plate's bore or the film's bend shuts the light out there"
+        )
+    planes = spread(view, report=report)
     exposure, pitch_mm = _on_pixels(planes, view, width_px)
     return Picture(
         exposure=exposure,
@@ -90,7 +96,7 @@ def _on_pixels(planes: Float, view: FilmView, width_px: int | None) -> tuple[Flo
         # The grid carries all that is on the film, so this reads the film between its points;
         # the margins lend their light to what lies at the frame's edge.
         step = plan.shape[1] / width_px
-        shape = max(1, round(plan.shape[0] / step)), width_px
+        shape = max(1, round(plan.camera.film.height_mm / (step * plan.pitch_mm))), width_px
         places = [
             margin + 0.5 * (size - 1) + (np.arange(count) - 0.5 * (count - 1)) * step
             for margin, size, count in zip(plan.margin, plan.shape, shape, strict=True)

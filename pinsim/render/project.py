@@ -12,6 +12,10 @@ from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks
 from pinsim.scene import DistanceMap, Scene
 
 Float = NDArray[np.float32]
+Array = NDArray[np.float64]
+
+# scipy.ndimage's words for our rules of what lies beyond the photo.
+_BEYOND = {"mirror": "reflect", "extend": "nearest", "black": "grid-constant"}
 
 _THREADS = 2
 _STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
@@ -25,6 +29,7 @@ class FilmView:
     inverse_distance : (rows, columns), 1/mm, or None when the whole scene has one distance.
     covered : (rows, columns) of the frame, True where the photo shows what the film sees.
     compensate : the light was dimmed by resample.response, to be given back while spreading.
+    unlit_share : how much of the frame no light reaches, 0 to 1; known after `illuminate`.
     """
 
     plan: RenderPlan
@@ -32,6 +37,7 @@ class FilmView:
     inverse_distance: Float | None
     covered: NDArray[np.bool_]
     compensate: bool
+    unlit_share: float = 0.0
 
     @property
     def covered_share(self) -> float:
@@ -41,12 +47,12 @@ class FilmView:
 
 def project(scene: Scene, plan: RenderPlan) -> FilmView:
     """Lay the scene on the film grid, upright as the scene is seen."""
-    if scene.projection == "equirectangular":
-        return _project_panorama(scene, plan)
-    return _project_rectilinear(scene, plan)
+    if scene.projection == "rectilinear" and plan.camera.surface.flat:
+        return _project_planes(scene, plan)
+    return _project_points(scene, plan)
 
 
-def _project_rectilinear(scene: Scene, plan: RenderPlan) -> FilmView:
+def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
     # Film and photo are both planes in front of one centre: film coordinates are photo coordinates
     # times one number, so rows and columns are resampled apart.
     rows, columns = scene.photo.shape
@@ -111,47 +117,37 @@ def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float6
     )
 
 
-def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
-    """Lay an equirectangular picture on the film: longitude across, latitude down."""
+def _project_points(scene: Scene, plan: RenderPlan) -> FilmView:
+    """Lay a scene on the film point by point, each looking up its own direction in the photo.
+
+    For panoramas and for bent film, where rows and columns do not part. Read on a grid twice as
+    fine, from a photo averaged down to that grid where it is finer still everywhere, and brought
+    to the film's grid like any photo.
+    """
     from scipy.ndimage import map_coordinates
 
     rows, columns = scene.photo.shape
-    per_rad = scene.focal_length_px
-    z = plan.camera.focal_length_mm
-    around = scene.horizontal_view_deg >= 359.99
-    # A panorama bends, so it is read point by point on a grid twice as fine, from a photo averaged
-    # down to that grid where it is finer still, and then brought to the film's grid like any photo.
+    around = scene.projection == "equirectangular" and scene.horizontal_view_deg >= 359.99
     fine = plan.pitch_mm / 2.0
-    shrink = max(1, math.floor(per_rad * fine / z))
-    small = _averaged(scene, shrink)
     right = np.repeat(plan.right_mm(), 2) + np.tile([-0.5, 0.5], plan.padded[1]) * fine
     up = np.repeat(plan.up_mm(), 2) + np.tile([0.5, -0.5], plan.padded[0]) * fine
-    column, row = _panorama_place(right, up, z, per_rad, rows, columns)
+    row, column, ahead = _places(scene, plan, right, up)
+    steps = np.hypot(np.diff(row, axis=1), np.diff(column, axis=1))[ahead[:, 1:]]
+    shrink = max(1, math.floor(float(np.percentile(steps, 2.0)))) if steps.size else 1
+    small = _averaged(scene, shrink)
     place = [(row + 0.5) / shrink - 0.5, (column + 0.5) / shrink - 0.5]
-    mode = (
-        "grid-wrap"
-        if around
-        else {"mirror": "reflect", "extend": "nearest", "black": "grid-constant"}[scene.beyond]
-    )
+    mode = "grid-wrap" if around else _BEYOND[scene.beyond]
 
     def read(channel: int) -> Float:
         return np.asarray(
             map_coordinates(small[..., channel], place, np.float32, order=3, mode=mode), np.float32
         )
 
-    down = make_blocks(
-        np.arange(plan.padded[0]) * 2 + 0.5,
-        2 * plan.padded[0],
-        step=2.0,
-        beyond="mirror",
-        cutoff=ALIAS_FREE,
-    )
-    across = make_blocks(
-        np.arange(plan.padded[1]) * 2 + 0.5,
-        2 * plan.padded[1],
-        step=2.0,
-        beyond="mirror",
-        cutoff=ALIAS_FREE,
+    down, across = (
+        make_blocks(
+            np.arange(size) * 2 + 0.5, 2 * size, step=2.0, beyond="mirror", cutoff=ALIAS_FREE
+        )
+        for size in plan.padded
     )
     planes = np.empty((3, *plan.padded), np.float32)
     with ThreadPoolExecutor(_THREADS) as pool:
@@ -161,10 +157,12 @@ def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
                 tall[block.to] = block.weights @ dense[block.take]
             for block in across:
                 planes[channel, :, block.to] = tall[:, block.take] @ block.weights.T
-    column, row = _panorama_place(plan.right_mm(), plan.up_mm(), z, per_rad, rows, columns)
+    row, column, ahead = _places(scene, plan, plan.right_mm(), plan.up_mm())
     inside = plan.inside
-    seen = (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows) & (
-        around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns)
+    seen = (
+        ahead[inside]
+        & (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows)
+        & (around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns))
     )
     return FilmView(
         plan=plan,
@@ -175,19 +173,25 @@ def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
     )
 
 
-def _panorama_place(
-    right_mm: NDArray[np.float64],
-    up_mm: NDArray[np.float64],
-    z: float,
-    per_rad: float,
-    rows: int,
-    columns: int,
-) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Return the panorama's columns and rows that film points look at."""
-    longitude = np.arctan2(right_mm, z)[None, :]
-    latitude = np.arctan2(up_mm[:, None], np.hypot(right_mm, z)[None, :])
-    column = np.broadcast_to(0.5 * (columns - 1) + per_rad * longitude, latitude.shape)
-    return column, 0.5 * (rows - 1) - per_rad * latitude
+def _places(
+    scene: Scene, plan: RenderPlan, right_mm: Array, up_mm: Array
+) -> tuple[Array, Array, NDArray[np.bool_]]:
+    """Return the photo's rows and columns that film points look at, and whether they look ahead."""
+    points = plan.camera.surface.points_mm(right_mm[None, :], up_mm[:, None])
+    x, y, z = points[..., 0], points[..., 1], points[..., 2]
+    rows, columns = scene.photo.shape
+    per = scene.focal_length_px
+    if scene.projection == "equirectangular":
+        column = 0.5 * (columns - 1) + per * np.arctan2(x, z)
+        row = 0.5 * (rows - 1) - per * np.arctan2(y, np.hypot(x, z))
+        return row, column, np.ones(z.shape, np.bool_)
+    # Where the film looks sideways or back, a flat photo has nothing: read its edge, call it hidden.
+    ahead = z > 1e-3 * plan.camera.focal_length_mm
+    depth = np.where(ahead, z, 1e-3 * plan.camera.focal_length_mm)
+    far = 4.0 * max(rows, columns)
+    column = 0.5 * (columns - 1) + np.clip(per * x / depth, -far, far)
+    row = 0.5 * (rows - 1) - np.clip(per * y / depth, -far, far)
+    return row, column, ahead
 
 
 def _averaged(scene: Scene, shrink: int) -> Float:

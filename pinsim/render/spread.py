@@ -6,17 +6,16 @@ cropped, so their long tails stay. Where the scene has a distance map, what arri
 equally spread coverage, so that borders between unlike kernels neither lose nor invent light.
 """
 
-from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
 from threading import Lock
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy import fft
 
 from pinsim.progress import Progress, Reporter, ignore
-from pinsim.render.kernels import BandKernels, Values, chebyshev_values, polar_reader
+from pinsim.render.kernels import BandKernels, Kernels, PolarReader, Values, chebyshev_values
 from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
 from pinsim.render.resample import ALIAS_FREE, response
@@ -24,6 +23,7 @@ from pinsim.render.resample import ALIAS_FREE, response
 Float = NDArray[np.float32]
 Array = NDArray[np.float64]
 Spectrum = NDArray[np.complex64]
+Kernel = NDArray[np.inexact[Any]]
 
 _THREADS = 2
 LEAST_RESPONSE = 0.02
@@ -39,25 +39,24 @@ _TABLE_CELLS = 96
 def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
     """Return the exposure of frame and margins, float32 (channels, rows, columns)."""
     plan = view.plan
+    kernels = plan.kernels
+    count = len(kernels.fields)
+    if plan.padded[0] * plan.padded[1] > LARGE_GRID_PX:
+        count = kernels.modes_for(LARGE_PICTURE_RMS, LARGE_SINGLE_OTF)
     grid = _Frequencies(plan, view.compensate)
     fields = _Fields(plan, view.inverse_distance)
-    planes = np.moveaxis(view.light, -1, 0)
     light = _Sum(len(plan.material.channels), grid.shape)
-    cover = light if view.inverse_distance is None else _Sum(light.spectra.shape[0], grid.shape)
-    jobs: list[Callable[[], None]] = []
-    for band in plan.kernels.bands:
-        count = len(band.modes)
-        if plan.padded[0] * plan.padded[1] > LARGE_GRID_PX:
-            count = band.modes_for(LARGE_PICTURE_RMS, LARGE_SINGLE_OTF)
-        for mode in range(-1, count):
-            jobs.append(_Job(band, mode, planes[band.band], grid, fields, light))
-            if view.inverse_distance is not None:
-                jobs.append(_Job(band, mode, None, grid, fields, cover))
+    cover = None if view.inverse_distance is None else _Sum(len(light.spectra), grid.shape)
+    planes = np.moveaxis(view.light, -1, 0)
+
+    def add(mode: int) -> None:
+        _add_mode(mode, kernels, planes, grid, fields, light, cover)
+
     with ThreadPoolExecutor(_THREADS) as pool:
-        for done, _ in enumerate(pool.map(lambda job: job(), jobs)):
-            report(Progress(done, len(jobs), "spreading the light"))
+        for done, _ in enumerate(pool.map(add, range(-1, count))):
+            report(Progress(done, count + 1, "spreading the light"))
     exposure = _inverse(light.spectra, plan)
-    if view.inverse_distance is not None:
+    if cover is not None:
         # Coverage is 1 up to what unlike kernels lose or invent at borders of distance.
         exposure /= np.maximum(_inverse(cover.spectra, plan), 0.1)
     return exposure
@@ -70,34 +69,37 @@ class _Sum:
         self.spectra: Spectrum = np.zeros((channels, *shape), np.complex64)
         self._locks = [Lock() for _ in range(channels)]
 
-    def add(self, channel: int, spectrum: Spectrum) -> None:
+    def add(self, channel: int, spectrum: Kernel) -> None:
         with self._locks[channel]:
             self.spectra[channel] += spectrum
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Job:
-    """One mode of one band, -1 for the mean: weight the light, transform, filter, add."""
-
-    band: BandKernels
-    mode: int
-    light: Float | None  # None: coverage, a scene that is white everywhere
-    grid: "_Frequencies"
-    fields: "_Fields"
-    total: _Sum
-
-    def __call__(self) -> None:
-        if self.mode < 0:
-            source = self.light if self.light is not None else self.fields.ones()
-            kernel = self.grid.mean(self.band)
-        else:
-            source = self.fields.field(self.band, self.mode)
-            if self.light is not None:
-                source *= self.light
-            kernel = self.grid.mode(self.band, self.mode)
-        spectrum = np.asarray(fft.rfft2(source))
-        spectrum *= kernel
-        self.total.add(self.band.channel, spectrum)
+def _add_mode(
+    mode: int,
+    kernels: Kernels,
+    planes: Float,
+    grid: "_Frequencies",
+    fields: "_Fields",
+    light: _Sum,
+    cover: _Sum | None,
+) -> None:
+    """Weight the light by one mode's field (-1: the mean's, which is 1), transform, filter, add."""
+    field = None if mode < 0 else fields.field(kernels.fields[mode])
+    covered = None
+    if cover is not None:
+        white = np.ones(planes.shape[1:], np.float32) if field is None else field
+        covered = np.asarray(fft.rfft2(white))
+    spectra: dict[int, Spectrum] = {}
+    for band in kernels.bands:
+        if band.band not in spectra:
+            plane = planes[band.band]
+            spectra[band.band] = np.asarray(fft.rfft2(plane if field is None else plane * field))
+        kernel = grid.mean(band) if mode < 0 else grid.mode(band, mode)
+        last = all(other.band != band.band for other in kernels.bands if other is not band)
+        source = spectra.pop(band.band) if last else spectra[band.band]
+        light.add(band.channel, np.multiply(source, kernel, out=source if last else None))
+        if cover is not None and covered is not None:
+            cover.add(band.channel, covered * kernel)
 
 
 def _inverse(spectra: Spectrum, plan: RenderPlan) -> Float:
@@ -108,44 +110,32 @@ class _Fields:
     """Where each mode is at work: smooth fields over film and distance, on the padded grid."""
 
     def __init__(self, plan: RenderPlan, inverse_distance: Float | None) -> None:
-        self._plan = plan
-        self._u, self._v = plan.right_mm(), plan.up_mm()
-        self._scale: Float | None = None
-        if inverse_distance is not None:
-            self._scale = 1.0 + np.float32(plan.camera.focal_length_mm) * inverse_distance
+        span = plan.kernels.range
+        _, count_u, count_v, count_m = plan.kernels.fields.shape
+        self._across = chebyshev_values(count_u, *span.u_mm, plan.right_mm()).T
+        self._down = chebyshev_values(count_v, *span.v_mm, plan.up_mm())
+        # Chebyshev polynomials of each point's m; the first is 1 everywhere.
+        self._by_distance: list[Float] = []
+        if inverse_distance is not None and count_m > 1:
+            low, high = span.scale
+            scale = 1.0 + np.float32(plan.camera.focal_length_mm) * inverse_distance
+            unit = np.clip(
+                (2.0 * scale - np.float32(low + high)) / np.float32(high - low), -1.0, 1.0
+            )
+            before, now = np.ones_like(unit), unit
+            for _ in range(count_m - 1):
+                self._by_distance.append(now)
+                before, now = now, 2.0 * unit * now - before
 
-    def ones(self) -> Float:
-        return np.ones(self._plan.padded, np.float32)
-
-    def field(self, band: BandKernels, mode: int) -> Float:
-        """Return the field of a mode, float32 (rows, columns)."""
-        coefficients = band.fields[mode].astype(np.float32)
-        count_u, count_v, count_m = coefficients.shape
-        span = self._plan.kernels.range
-        across = chebyshev_values(count_u, *span.u_mm, self._u)
-        down = chebyshev_values(count_v, *span.v_mm, self._v)
-        total: Float | None = None
-        for k in range(count_m):
-            part = down @ (coefficients[:, :, k].T @ across.T)
-            if k > 0 and self._scale is not None:
-                part *= self._polynomial(k)
-            total = part if total is None else np.add(total, part, out=total)
-        if total is None:
-            raise AssertionError("a field without coefficients")
+    def field(self, coefficients: Array) -> Float:
+        """Return a field, float32 (rows, columns), from its coefficients (u, v, m)."""
+        single = coefficients.astype(np.float32)
+        total: Float = self._down @ (single[:, :, 0].T @ self._across)
+        for k, polynomial in enumerate(self._by_distance, start=1):
+            part = self._down @ (single[:, :, k].T @ self._across)
+            part *= polynomial
+            total += part
         return total
-
-    def _polynomial(self, k: int) -> Float:
-        """Return the Chebyshev polynomial of degree k of each point's m."""
-        if self._scale is None:
-            raise AssertionError("no distances")
-        low, high = self._plan.kernels.range.scale
-        unit = np.clip(
-            (2.0 * self._scale - np.float32(low + high)) / np.float32(high - low), -1.0, 1.0
-        )
-        before, now = np.ones_like(unit), unit
-        for _ in range(k - 1):
-            before, now = now, 2.0 * unit * now - before
-        return now
 
 
 class _Frequencies:
@@ -153,52 +143,63 @@ class _Frequencies:
 
     def __init__(self, plan: RenderPlan, compensate: bool) -> None:
         rows, columns = plan.padded
-        self._across = fft.rfftfreq(columns, plan.pitch_mm)
-        # Rows run down and v up, so a row frequency is minus a film frequency.
-        self._down = -fft.fftfreq(rows, plan.pitch_mm)
-        self.shape = (rows, self._across.size)
         pitch = plan.pitch_mm
-        self._windows = tuple(
-            _pixel_response(axis * pitch, plan.averaged, compensate)
-            for axis in (self._down, self._across)
-        )
-        ends = [min(plan.kernels.bands[0].radii[-1], 0.5 / pitch)] * 2
-        self._cells = [
-            np.linspace(-ends[0], ends[0], 2 * _TABLE_CELLS + 1),
-            np.linspace(0.0, ends[1], _TABLE_CELLS + 1),
+        across = fft.rfftfreq(columns, pitch)
+        # Rows run down and v up, so a row frequency is minus a film frequency.
+        down = -fft.fftfreq(rows, pitch)
+        self.shape = (rows, across.size)
+        self._window = [
+            _pixel_response(axis * pitch, plan.averaged, compensate).astype(np.float32)
+            for axis in (down, across)
         ]
+        end = min(float(plan.kernels.radii[-1]), 0.5 / pitch)
+        cells = (
+            np.linspace(-end, end, 2 * _TABLE_CELLS + 1),
+            np.linspace(0.0, end, _TABLE_CELLS + 1),
+        )
+        self._radius = np.hypot(cells[0][:, None], cells[1][None, :])
+        self._angle = np.arctan2(cells[0][:, None], cells[1][None, :])
         self._hats = [
-            _hats(axis, cells) * window[:, None].astype(np.float32)
-            for axis, cells, window in zip(
-                (self._down, self._across), self._cells, self._windows, strict=True
-            )
+            _hats(axis, own) * window[:, None]
+            for axis, own, window in zip((down, across), cells, self._window, strict=True)
         ]
+        # |nu| of the upper half of the rows; the lower half mirrors it.
+        self._upper = np.hypot(down[: rows // 2 + 1, None], across[None, :]).astype(np.float32)
+        self._mirror = rows - np.arange(rows // 2 + 1, rows)
+        self._reader = PolarReader(plan.kernels.radii)
 
-    def mean(self, band: BandKernels) -> NDArray[np.floating] | Spectrum:
-        """Return the mean kernel at every frequency, read exactly."""
-        down, across = self._down[:, None], self._across[None, :]
-        values = polar_reader(band)(band.mean, np.hypot(down, across), np.arctan2(down, across))
-        return _single(values * np.outer(*self._windows) * band.share)
+    def mean(self, band: BandKernels) -> Kernel:
+        """Return the mean kernel at every frequency.
 
-    def mode(self, band: BandKernels, mode: int) -> NDArray[np.floating] | Spectrum:
-        """Return a mode at every frequency, read from a coarser square table."""
-        down, across = self._cells[0][:, None], self._cells[1][None, :]
-        table = polar_reader(band)(
-            band.modes[mode], np.hypot(down, across), np.arctan2(down, across)
-        )
-        table = _single(table * band.share)
-        return np.asarray(self._hats[0] @ (table @ self._hats[1].T))
+        Its average over directions is read along the radius, which keeps the point it has at zero
+        frequency, where the long tails are; the rest is read as modes are.
+        """
+        average = band.mean.real.mean(axis=1)
+        radius, fine = self._reader.along(average)
+        upper = np.interp(self._upper, radius, fine, right=0.0).astype(np.float32)
+        upper *= np.float32(band.share)
+        kernel = np.concatenate([upper, upper[self._mirror]])
+        kernel *= self._window[0][:, None]
+        kernel *= self._window[1]
+        return kernel + self._from_table(band.mean - average[:, None], band.share)
 
+    def mode(self, band: BandKernels, mode: int) -> Kernel:
+        """Return a mode at every frequency."""
+        return self._from_table(band.modes[mode], band.share)
 
-def _single(values: Values) -> NDArray[np.floating] | Spectrum:
-    return values.astype(np.complex64 if np.iscomplexobj(values) else np.float32)
+    def _from_table(self, values: Values, share: float) -> Kernel:
+        """Read a polar table through a coarser square one, by linear interpolation."""
+        table = share * self._reader.at(values, self._radius, self._angle)
+        kind = np.complex64 if np.iscomplexobj(table) else np.float32
+        kernel: Kernel = self._hats[0] @ (table.astype(kind) @ self._hats[1].T)
+        return kernel
 
 
 def _hats(axis: Array, cells: Array) -> Float:
     """Return weights of linear interpolation, (axis, cells); nothing beyond the cells."""
     step = cells[1] - cells[0]
     near = np.maximum(1.0 - np.abs(axis[:, None] - cells) / step, 0.0)
-    return near.astype(np.float32)
+    return np.asarray(near, np.float32)
 
 
 def _pixel_response(cycles_per_px: Array, averaged: bool, compensate: bool) -> Array:

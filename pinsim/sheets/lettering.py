@@ -3,6 +3,7 @@
 Letters are Pillow's own scalable font, which is on every machine; it holds ASCII only.
 """
 
+import unicodedata
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
@@ -91,14 +92,30 @@ class Paper:
         return Sheet(np.asarray(self._image), description)
 
 
+def _plain(line: str) -> str:
+    """Return a line in ASCII: accents are dropped, other foreign letters become question marks."""
+    bare = unicodedata.normalize("NFKD", line)
+    bare = "".join(letter for letter in bare if not unicodedata.combining(letter))
+    return bare.encode("ascii", "replace").decode()
+
+
 def _broken(line: str, font: Any, width: int) -> list[str]:
     parts: list[str] = []
-    for word in line.split(" "):
+    for word in _plain(line).split(" "):
         longer = f"{parts[-1]} {word}" if parts else word
         if parts and font.getlength(longer) <= width:
             parts[-1] = longer
-        else:
-            parts.append(word)
+            continue
+        rest = word
+        while font.getlength(rest) > width and len(rest) > 1:  # a file name may be one long word
+            fits = next(
+                n
+                for n in range(len(rest) - 1, 0, -1)
+                if font.getlength(rest[:n]) <= width or n == 1
+            )
+            parts.append(rest[:fits])
+            rest = rest[fits:]
+        parts.append(rest)
     return parts
 
 

@@ -160,16 +160,17 @@ def _laid_out(
     look = pictures[0].look
     captions = [_captions(p, f) for p, f in zip(pictures, numbers, strict=True)]
     verdict = _verdict(numbers)
-    head = GAP + text_height(title, size=32) + text_height(LOOK_TEXT[look]) + GAP // 2
+    width = 2 * column + 3 * GAP
+    room = width - 2 * GAP
+    head = GAP + text_height(title, size=32, width=room) + text_height(LOOK_TEXT[look]) + GAP // 2
     caption_height = max(
         sum(text_height(line, size=size, width=column) for line, size in one) for one in captions
     )
     detail_top = head + caption_height + GAP // 2 + shape[0] + GAP
     foot = detail_top + detail_px + 30 + GAP
-    width = 2 * column + 3 * GAP
-    height = foot + text_height(verdict, size=22, width=width - 2 * GAP) + GAP
+    height = foot + text_height(verdict, size=22, width=room) + GAP
     paper = Paper(width, height)
-    y = paper.text(GAP, GAP, title, size=32)
+    y = paper.text(GAP, GAP, title, size=32, width=room)
     paper.text(GAP, y, LOOK_TEXT[look], faint=True)
     for i, picture in enumerate(pictures):
         x = GAP + i * (column + GAP)
@@ -192,7 +193,7 @@ def _laid_out(
                 size=17,
                 faint=True,
             )
-    paper.text(GAP, foot, verdict, size=22, width=width - 2 * GAP)
+    paper.text(GAP, foot, verdict, size=22, width=room)
     names = " and ".join(p.camera.summary for p in pictures)
     return paper.finished(f"pinsim: {scene.name} through {names}; {LOOK_TEXT[look]}")
 

@@ -65,7 +65,9 @@ def trace_edge(light: Light, found: Found, where: str) -> Edge:
         across = 2.0 * math.sqrt(area / math.pi)
         _require_pixels(across, where)
         slope = _slope(share, contour)
-        blur = 1.0 / (math.sqrt(2.0 * math.pi) * slope)
+        # Of a Gaussian edge, less the 1/3 that differences two pixels apart add to its variance.
+        # The 1/6 of linear interpolation between pixels stays: it moves the contour as well.
+        blur = math.sqrt(max(1.0 / (2.0 * math.pi * slope**2) - 1.0 / 3.0, smoothing**2))
         # Blur pulls the half-way line of a small disc inwards: on its true edge lies a little less
         # than half, by blur/(2 sqrt(2 pi) R) to first order in the edge's curvature 1/R.
         level = 0.5 - min(0.1, blur / (math.sqrt(2.0 * math.pi) * across))
@@ -76,7 +78,7 @@ def trace_edge(light: Light, found: Found, where: str) -> Edge:
     top, _, left, _ = _window(light.shape, found)
     return Edge(
         outline_px=without_noise(contour) + np.array([left, top]),
-        blur_px=math.sqrt(max(blur**2 - smoothing**2, 0.0)),
+        blur_px=math.sqrt(max(blur**2 - smoothing**2 - 1.0 / 6.0, 0.0)),
         noise_px=noise / slope,
         step=float(np.median(part[inside]) - np.median(part[plate & ~inside])),
         specks=holes,
@@ -137,9 +139,7 @@ def _filled(mask: Mask, near: Mask) -> Mask:
     return np.asarray(ndimage.binary_fill_holes(labels == 1 + int(np.argmax(shared))))
 
 
-def _inside_share(
-    part: Array, inside: Mask, plate: Mask, reach: float
-) -> tuple[Array, float]:
+def _inside_share(part: Array, inside: Mask, plate: Mask, reach: float) -> tuple[Array, float]:
     """Return how far each pixel's light is from the plate's (0) to the hole's (1), and its noise.
 
     Pixels within `reach` of the edge so far are of neither; the surfaces bridge them.
@@ -171,7 +171,8 @@ class _Surface:
         y, x = y[::stride], x[::stride]
         scale = 0.5 * max(rows, columns)
         middle = float(np.mean(y)), float(np.mean(x))
-        degree = 2 if len(y) >= 150 else 1 if len(y) >= 20 else 0
+        # A small hole has too few pixels for more; bent surfaces would follow their noise to the edge.
+        degree = 2 if len(y) >= 600 else 1 if len(y) >= 40 else 0
         light = part[y, x]
 
         def terms(v: Array, u: Array) -> list[Array]:
@@ -179,13 +180,13 @@ class _Surface:
             return [np.broadcast_to(p, np.broadcast_shapes(u.shape, v.shape)) for p in powers]
 
         design = np.stack(terms((y - middle[0]) / scale, (x - middle[1]) / scale), axis=1)
-        weight = np.ones(len(y))
+        weight: Array = np.ones(len(y))
         spread = 0.0
         factors = np.zeros(design.shape[1])
         for turn in range(12):
             root = np.sqrt(weight)[:, None]
             factors = np.linalg.lstsq(design * root, light * root[:, 0], rcond=None)[0]
-            rest = np.abs(light - design @ factors)
+            rest: Array = np.abs(light - design @ factors)
             spread = max(1.4826 * float(np.median(rest)), 1e-6)
             # First the least absolute errors, then nothing that lies far off: dust, scratches.
             weight = spread / np.maximum(rest, spread)
@@ -234,7 +235,7 @@ def _outline(share: Array, inside: Mask, level: float, where: str) -> Array:
     closed = [c[:-1, ::-1] for c in contours]
     areas = [area_and_centroid(c)[0] if len(c) > 2 else 0.0 for c in closed]
     largest = int(np.argmax(np.abs(areas)))
-    outline = closed[largest]
+    outline: Array = closed[largest]
     return outline if areas[largest] > 0.0 else outline[::-1]
 
 

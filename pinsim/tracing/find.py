@@ -23,6 +23,10 @@ Mask = NDArray[np.bool_]
 _COARSE_PX = 1200
 # Against the noise of single pixels; pure noise, smoothed and cut in two, gives spots of 0.3.
 _LEAST_CONTRAST = 2.5
+# Against the whole range of light; lamps from one side alone give spots of hundredths.
+_LEAST_STEP = 0.06
+# Smaller than any hole that could be measured, larger than dust.
+_LEAST_IN_PLATE_PX = 12
 # Spots this many times smaller than the largest are dust.
 _LIKE_SIZE = 0.6
 _SMALLEST_SPOT_PX = 3
@@ -67,17 +71,16 @@ def find_hole(light: Light, polarity: Polarity | None, where: str) -> Found:
     coarse = block_means(light, step)
     noise, smooth = _noise_and_smooth(coarse)
     tried: tuple[Polarity, ...] = (polarity,) if polarity else ("bright", "dark")
-    best: list[_Spot] = []
+    least = max(_LEAST_CONTRAST * noise, _LEAST_STEP * float(np.ptp(smooth)))
+    by_threshold: list[list[_Spot]] = []
     cut: list[_Spot] = []
     for threshold in _thresholds(smooth):
-        spots: list[_Spot] = []
+        by_threshold.append([])
         for one in tried:
-            inner, at_edge = _spots(smooth, threshold, one, _LEAST_CONTRAST * noise)
-            spots += inner
+            inner, at_edge = _spots(smooth, threshold, one, least)
+            by_threshold[-1] += inner
             cut += at_edge
-        spots = sorted(_without_plates(spots, coarse.shape), key=lambda s: -s.area)
-        if spots and (not best or _weight(spots[0]) > _weight(best[0])):
-            best = spots
+    best = _best(by_threshold, coarse.shape, step)
     _refuse_cut(best, cut, step, where)
     if not best:
         raise SceneError(
@@ -197,37 +200,46 @@ def _contrast(
     return difference if polarity == "bright" else -difference
 
 
-def _without_plates(spots: list[_Spot], shape: tuple[int, ...]) -> list[_Spot]:
-    """Leave out plates that lie wholly in the picture, with a scan's border around them.
+def _best(by_threshold: list[list[_Spot]], shape: tuple[int, ...], step: int) -> list[_Spot]:
+    """Return the spots of the threshold that shows the clearest large one, the largest first."""
+    every = [spot for spots in by_threshold for spot in spots]
+    best: list[_Spot] = []
+    for some in by_threshold:
+        spots = [s for s in some if not _is_plate(s, every, shape, step)]
+        spots.sort(key=lambda s: -s.area)
+        if spots and (not best or _weight(spots[0]) > _weight(best[0])):
+            best = spots
+    return best
 
-    Such a plate is a rectangle, perhaps turned a little, over most of the picture, and has another
-    spot in it.
+
+def _is_plate(spot: _Spot, every: list[_Spot], shape: tuple[int, ...], step: int) -> bool:
+    """Tell whether a spot is the plate, lying wholly in the picture within a scan's border.
+
+    Such a plate is a rectangle, perhaps turned a little, over most of the picture, and something that
+    may be a hole lies in it.
     """
     from skimage.measure import find_contours
 
     from pinsim.tracing.outline import area_and_centroid, calipers
 
-    left: list[_Spot] = []
-    for spot in spots:
-        top, first, bottom, last = spot.box
-        wide = bottom - top > 0.6 * shape[0] and last - first > 0.6 * shape[1]
-        holds_other = any(
-            other.polarity != spot.polarity
-            and top < other.centre[0] < bottom
-            and first < other.centre[1] < last
-            for other in spots
-        )
-        if wide and holds_other:
-            contour = max(find_contours(np.pad(spot.mask, 1).astype(float), 0.5), key=len)
-            shortest = calipers(contour)[1]
-            area = abs(area_and_centroid(contour)[0])
-            along = np.subtract(shortest.second, shortest.first) / shortest.length
-            across = contour @ np.array([-along[1], along[0]])
-            # A disc fills 0.79 of the box around it.
-            if area > 0.93 * shortest.length * float(np.ptp(across)):
-                continue
-        left.append(spot)
-    return left
+    top, left, bottom, right = spot.box
+    if bottom - top < 0.6 * shape[0] or right - left < 0.6 * shape[1]:
+        return False
+    if not any(
+        _LEAST_IN_PLATE_PX <= other.size * step
+        and other.size < 0.8 * spot.size
+        and top < other.centre[0] < bottom
+        and left < other.centre[1] < right
+        for other in every
+    ):
+        return False
+    contour = max(find_contours(np.pad(spot.mask, 1).astype(float), 0.5), key=len)
+    shortest = calipers(contour)[1]
+    area = abs(area_and_centroid(contour)[0])
+    along = np.subtract(shortest.second, shortest.first) / shortest.length
+    across = contour @ np.array([-along[1], along[0]])
+    # A disc fills 0.79 of the box around it.
+    return area > 0.93 * shortest.length * float(np.ptp(across))
 
 
 def _refuse_cut(best: list[_Spot], cut: list[_Spot], step: int, where: str) -> None:

@@ -35,7 +35,7 @@ CELLS_ACROSS = 256
 DIAMETER_RANGE_MM = (0.01, 100.0)
 
 # A hole more than this many pixels across is measured on means of pixels: finer is only slower.
-_ENOUGH_ACROSS_PX = 1600
+_ENOUGH_ACROSS_PX = 1000
 _MOST_POINTS = 4096
 _LUMINANCE = np.array([0.2126, 0.7152, 0.0722], np.float32)  # IEC 61966-2-1, row Y
 _ROWS_AT_ONCE = 512
@@ -86,7 +86,8 @@ class HoleScan:
     def scan_px(self, places_mm: Array) -> Array:
         """Return columns and rows of the scan for places (n, 2) right and up of the centroid."""
         right = -1.0 if self.seen_from == "front" else 1.0
-        return np.array(self.centroid_px) + places_mm * np.array([right, -1.0]) / self.pixel_mm
+        turned = places_mm * np.array([right, -1.0]) / self.pixel_mm
+        return np.asarray(turned + np.array(self.centroid_px))
 
     def scaled_to(self, diameter_mm: float) -> "HoleScan":
         """Return this hole with another area-equivalent diameter, as if the scale had been so."""
@@ -169,9 +170,7 @@ def measure_hole(
         grey = block_means(grey, step)
         found = find_hole(grey, found.polarity, where)
     edge = trace_edge(grey, found, where)
-    return _measured(
-        edge, found, step, pixel_mm, "front" if seen_from == "front" else "behind"
-    )
+    return _measured(edge, found, step, pixel_mm, "front" if seen_from == "front" else "behind")
 
 
 def _require_choice(name: str, value: str, allowed: tuple[str, ...]) -> None:
@@ -224,7 +223,7 @@ def _measured(
 
 def opening_of(outline_mm: Array, cell_mm: float) -> Traced:
     """Return the opening within an outline, on cells of the given size, each by its exact area."""
-    half = int(math.ceil(float(np.abs(outline_mm).max()) / cell_mm)) + 1
+    half = math.ceil(float(np.abs(outline_mm).max()) / cell_mm) + 1
     clear = clear_cells(outline_mm, cell_mm, 2 * half)
     clear.flags.writeable = False
     return Traced(clear=clear, cell_mm=cell_mm)
@@ -246,5 +245,3 @@ def _notes(edge: Edge, across_px: float) -> tuple[str, ...]:
             f"{across_px:.0f} px; fine burrs do not show"
         )
     return tuple(notes)
-
-

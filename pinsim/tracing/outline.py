@@ -65,7 +65,7 @@ def without_noise(outline_px: Array) -> Array:
 
 
 def shape_perimeter(outline: Array) -> float:
-    """Return the perimeter without waves shorter than 1/40 of it, so that noise does not lengthen it."""
+    """Return the perimeter without waves shorter than 1/40 of it, which may be noise."""
     return perimeter(smoothed(outline, perimeter(outline) / _SHAPE_WAVES))
 
 
