@@ -4,7 +4,7 @@ __init__.py     the table of commands, and how every error becomes one line
 options.py      quantities and the options that commands share
 designs.py      what was typed -> Scenes and Cameras
 show.py         progress bars, tables and what is printed at the end
-preview.py, compare.py, contact_sheet.py, numbers.py    one command each
+preview.py, compare.py, contact_sheet.py, numbers.py, trace.py    one command each
 """
 
 import importlib
@@ -26,6 +26,7 @@ COMMANDS = {
         "pinsim.cli.numbers",
         "Print a camera's figures: sharpness, angles, light, best hole.",
     ),
+    "trace": ("pinsim.cli.trace", "Measure a drilled hole from its scan, and design with it."),
 }
 
 

@@ -39,6 +39,11 @@ def make_camera(
         camera = camera.with_focal_length(focal_mm)
     if hole_mm is not None:
         camera = camera.with_hole(hole_mm)
+    return change_camera(camera, options)
+
+
+def change_camera(camera: Camera, options: Mapping[str, Any]) -> Camera:
+    """Return a design with what the line says of its plate, film, material and tone."""
     if options.get("plate_mm") is not None:
         hole = replace(camera.hole, plate_thickness_mm=options["plate_mm"])
         camera = replace(camera, hole=hole)

@@ -119,6 +119,47 @@ cameras_options = _all(
     *_single_film,
 )
 
+traced_camera_options = _all(
+    click.option(
+        "--focal-length",
+        "focal_mm",
+        type=LENGTH,
+        help="From the hole to the film: tells what the hole does to the picture.",
+    ),
+    *_single_film,
+)
+
+trace_options = _all(
+    click.option("--pixel-size", "pixel_mm", type=LENGTH, help="Size of the scan's pixels: 2.5um."),
+    click.option("--dpi", type=float, help="Dots per inch that the scanner was set to."),
+    click.option(
+        "--reference",
+        metavar="X,Y,X,Y=LENGTH",
+        help="Two points of the scan, column and row from its top left, and their distance: "
+        "12,40,980,44=10mm.",
+    ),
+    click.option(
+        "--diameter",
+        "diameter_mm",
+        type=LENGTH,
+        help="Diameter of the round hole of the same area, if known better than the scale.",
+    ),
+    click.option(
+        "--polarity",
+        type=click.Choice(["auto", "bright", "dark"]),
+        default="auto",
+        show_default=True,
+        help="Whether the hole is brighter or darker than its plate.",
+    ),
+    click.option(
+        "--seen-from",
+        type=click.Choice(["behind", "front"]),
+        default="behind",
+        show_default=True,
+        help="The plate's side that the scan shows: as from inside the box, or from the scene.",
+    ),
+)
+
 light_options = _all(
     click.option(
         "--wavelength", "wavelength_nm", type=WAVELENGTH, help="All light of one colour: 550nm."

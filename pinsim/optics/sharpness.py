@@ -1,14 +1,28 @@
 """What a transfer function means to someone who builds the camera: detail, spot, best hole."""
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from pinsim.optics.film_surface import ChiefRays
+from pinsim.optics.film_transfer import ray_otf
+from pinsim.optics.opening import Ellipse, Opening
 from pinsim.optics.round_hole import gauss_legendre, overlap_otf
 
 Array = NDArray[np.float64]
+
+# A transfer function bends so little with the wavelength that this many, well chosen, stand for any
+# light: finest detail changes by less than 1e-4.
+_WAVELENGTHS = 6
+# Around detail of 20 % contrast no hole ever draws beyond 0.9/sqrt(lambda z), at 10 % 1.3; see
+# detail_anywhere. A large hole's shadow has fallen below 10 % long before these cycles across it.
+_FINEST_UNITS = 1.6
+_CYCLES_ACROSS = 4.0
+LEAST_CONTRAST = 0.1
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -26,6 +40,39 @@ class Light:
             raise ValueError("Light takes two flat arrays of one length")
         if not math.isclose(float(self.shares.sum()), 1.0, rel_tol=1e-9):
             raise ValueError(f"the shares of Light sum to {self.shares.sum():g}, not to 1")
+
+    @property
+    def mean_nm(self) -> float:
+        """The mean wavelength."""
+        return float(self.shares @ self.wavelengths_nm)
+
+    def condensed(self, count: int = _WAVELENGTHS) -> "Light":
+        """Return `count` wavelengths that average polynomials of degree 2 count - 1 like this light.
+
+        Gauss quadrature of the light's own spectrum, by Lanczos' recurrence (Golub and Welsch, Math.
+        Comp. 23 (1969) 221, from memory).
+        """
+        wavelengths, where = np.unique(self.wavelengths_nm, return_inverse=True)
+        shares = np.bincount(where, weights=self.shares)
+        wavelengths, shares = wavelengths[shares > 0.0], shares[shares > 0.0]
+        if wavelengths.size <= count:
+            return Light(wavelengths_nm=wavelengths, shares=shares)
+        middle, half = 0.5 * (wavelengths[0] + wavelengths[-1]), 0.5 * np.ptp(wavelengths)
+        scaled = (wavelengths - middle) / half
+        vectors = [np.sqrt(shares)]
+        matrix = np.zeros((count, count))
+        for i in range(count):
+            image = scaled * vectors[i]
+            matrix[i, i] = image @ vectors[i]
+            for _ in range(2):  # twice is enough to keep them at right angles
+                image = image - sum((image @ one) * one for one in vectors)
+            if i + 1 < count:
+                length = float(np.linalg.norm(image))
+                matrix[i, i + 1] = matrix[i + 1, i] = length
+                vectors.append(image / length)
+        nodes, modes = np.linalg.eigh(matrix)
+        weights = modes[0] ** 2
+        return Light(wavelengths_nm=middle + half * nodes, shares=weights / weights.sum())
 
 
 def light_otf(
@@ -50,14 +97,18 @@ def light_otf(
     return np.asarray(light.shares @ overlap_otf(shift, phase, diameter_mm=diameter_mm))
 
 
-def _first_fall(frequency: Array, contrast: Array, level: float) -> float:
-    """Return where a sampled curve that starts at 1 first falls to `level`; 0 if it never does."""
-    below = np.flatnonzero(contrast <= level)
-    if below.size == 0:
-        return 0.0
-    i = int(below[0])
-    step = (contrast[i - 1] - level) / (contrast[i - 1] - contrast[i])
-    return float(frequency[i - 1] + step * (frequency[i] - frequency[i - 1]))
+def first_fall(curves: Array, level: float) -> Array:
+    """Return where sampled curves that start at 1 first fall to `level`, as a share of their length.
+
+    curves : (..., n) at even steps from 0 to 1. Returns (...); 1 for a curve that never falls so low.
+    """
+    below = curves <= level
+    i = np.maximum(below.argmax(axis=-1), 1)
+    after = np.take_along_axis(curves, i[..., None], -1)[..., 0]
+    before = np.take_along_axis(curves, i[..., None] - 1, -1)[..., 0]
+    drop = np.where(before > after, before - after, 1.0)
+    place = (i - 1 + (before - level) / drop) / (curves.shape[-1] - 1)
+    return np.where(below.any(axis=-1), place, 1.0)
 
 
 def finest_detail(
@@ -77,6 +128,7 @@ def finest_detail(
     """
     cosine = math.cos(math.radians(field_deg))
     shortest_mm = float(light.wavelengths_nm.min()) * 1e-6
+    light = light.condensed()
     # The curve has ended at the diffraction cut-off, and long before in a large hole, where the
     # shadow's jinc has its first zero at 1.22/(m d) and never again reaches 0.14.
     shadow_mm = diameter_mm * (1.0 + focal_length_mm / distance_mm)
@@ -94,7 +146,7 @@ def finest_detail(
             distance_mm=distance_mm,
             tilt_shift=tilt_shift,
         )
-        worst = min(worst, _first_fall(frequency, curve, contrast))
+        worst = min(worst, float(frequency[-1] * first_fall(curve, contrast)))
     return worst
 
 
@@ -114,6 +166,7 @@ def spot_diameter_mm(
     from scipy.optimize import brentq
     from scipy.special import j1
 
+    light = light.condensed()
     scale = 1.0 + focal_length_mm / distance_mm
     cutoffs = diameter_mm / (light.wavelengths_nm * 1e-6 * focal_length_mm)
     # One shadow plus the far-field pattern is wider than any share below 0.9 of the light.
@@ -148,29 +201,113 @@ def best_diameter_mm(
     contrast: float = 0.2,
     field_deg: float = 0.0,
 ) -> float:
-    """Return the hole that draws the finest detail at `contrast`.
+    """Return the hole that draws the finest detail at `contrast`; off the axis on a flat film.
+
+    In the overlap integral depth and distance enter only as 1/z + 1/zo, and scale out of it: in any
+    light the best hole is that of a box 1 mm deep times sqrt(1 / (1/z + 1/zo)).
+    """
+    unit = _best_of_1_mm(
+        tuple(light.wavelengths_nm.tolist()), tuple(light.shares.tolist()), contrast, field_deg
+    )
+    return unit / math.sqrt(1.0 / focal_length_mm + 1.0 / distance_mm)
+
+
+@lru_cache(maxsize=64)
+def _best_of_1_mm(
+    wavelengths_nm: tuple[float, ...],
+    shares: tuple[float, ...],
+    contrast: float,
+    field_deg: float,
+) -> float:
+    """Search the best hole of a box 1 mm deep for far objects.
 
     Below about 15 % contrast the finest detail jumps where the curve stops being monotonic; a
     grid finer than any jump is searched rather than a slope followed.
     """
-    mean_mm = float(light.shares @ light.wavelengths_nm) * 1e-6
-    # The optimum follows sqrt(lambda z_e) between the trade's smallest and largest constants.
-    unit_mm = math.sqrt(mean_mm / (1.0 / focal_length_mm + 1.0 / distance_mm))
-    low, high = 0.7, 3.0
+    whole = Light(wavelengths_nm=np.array(wavelengths_nm), shares=np.array(shares))
+    light = whole.condensed()
+    shortest_mm = float(whole.wavelengths_nm.min()) * 1e-6
+    cosine = math.cos(math.radians(field_deg))
+    tilts = sorted({1.0 / cosine, 1.0 / cosine**3})
 
-    def detail(k: float, samples: int) -> float:
-        return finest_detail(
-            diameter_mm=k * unit_mm,
-            focal_length_mm=focal_length_mm,
-            light=light,
-            distance_mm=distance_mm,
-            contrast=contrast,
-            field_deg=field_deg,
-            samples=samples,
-        )
+    def details(diameter: Array, finest: float, samples: int) -> Array:
+        worst = np.full(diameter.shape, math.inf)
+        for tilt in tilts:
+            top = np.minimum(diameter / (shortest_mm * tilt), finest)
+            if contrast >= 0.14:  # as in finest_detail
+                top = np.minimum(top, 6.0 / diameter)
+            frequency = top[:, None] * np.linspace(0.0, 1.0, samples)
+            phase = frequency * diameter[:, None]
+            shift = (frequency * (1e-6 * tilt) / diameter[:, None])[None] * (
+                light.wavelengths_nm[:, None, None]
+            )
+            otf = overlap_otf(shift, phase[None], diameter_mm=1.0)
+            curves = np.tensordot(light.shares, otf, 1)
+            worst = np.minimum(worst, top * first_fall(curves, contrast))
+        return worst
 
-    for count, samples in ((24, 150), (17, 300), (17, 600)):
+    # The optimum follows sqrt(lambda z) between the trade's smallest and largest constants, and
+    # off the axis the wider shift acts like a longer wave.
+    unit = math.sqrt(whole.mean_nm * 1e-6)
+    low, high = 0.7 * unit, 3.0 * unit * cosine**-1.5
+    finest = math.inf
+    for count, samples in ((24, 150), (17, 150), (17, 240)):
         grid = np.linspace(low, high, count)
-        best = int(np.argmax([detail(float(k), samples) for k in grid]))
+        found = details(grid, finest, samples)
+        best = int(found.argmax())
         low, high = float(grid[max(best - 1, 0)]), float(grid[min(best + 1, count - 1)])
-    return 0.5 * (low + high) * unit_mm
+        finest = 1.4 * float(found[best])
+    return 0.5 * (low + high)
+
+
+def detail_anywhere(
+    directions: ArrayLike,
+    *,
+    rays: ChiefRays,
+    opening: Opening,
+    plate_thickness_mm: float,
+    light: Light,
+    distance_mm: float = math.inf,
+    contrasts: Sequence[float] = (0.2,),
+    samples: int = 64,
+) -> Array:
+    """Return the finest detail at one film point, cycles/mm along the film.
+
+    directions : (m, 2), unit, right and up, along which the detail repeats. rays : of one film point.
+    contrasts : (k,), each at least 0.1. Returns (m, k); 0 where no light comes.
+
+    Along one direction the opening is shifted by lambda L nu and the phase turns with M nu. No hole
+    draws 10 % contrast beyond about 1.3/sqrt(lambda L M) (see _FINEST_UNITS), so curves end there.
+    """
+    if min(contrasts) < LEAST_CONTRAST:
+        raise ValueError(f"contrasts below {LEAST_CONTRAST:g} are not looked for")
+    along = np.asarray(directions, np.float64)
+    bore_mm = plate_thickness_mm * rays.tangent
+    if float(rays.falloff) <= 0.0 or float(opening.clear_share(bore_mm)) <= 0.0:
+        return np.zeros((len(along), len(contrasts)))
+    shift = along @ rays.shift.T
+    reach = np.linalg.norm(shift, axis=1)
+    turn = np.linalg.norm(shift @ rays.focus(distance_mm).T, axis=1)
+    top = np.minimum(
+        opening.width_mm / (float(light.wavelengths_nm.min()) * 1e-6 * reach),
+        _FINEST_UNITS / np.sqrt(light.mean_nm * 1e-6 * reach * turn),
+    )
+    if isinstance(opening, Ellipse):
+        narrow = min(opening.right_mm, opening.up_mm)
+        left = max(narrow - float(np.hypot(*bore_mm)), 0.2 * narrow)
+        top = np.minimum(top, _CYCLES_ACROSS / (turn * left))
+    frequency = (top[:, None] * np.linspace(0.0, 1.0, samples))[..., None] * along[:, None, :]
+    flat = frequency.reshape(-1, 2)
+    total = np.zeros(len(flat), np.complex128)
+    for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
+        total += share * ray_otf(
+            flat,
+            rays=rays,
+            opening=opening,
+            plate_thickness_mm=plate_thickness_mm,
+            distance_mm=distance_mm,
+            wavelength_nm=float(wavelength),
+        )
+    # A mirrored opening has a real curve, negative where light and dark change places.
+    curves = (total.real if opening.mirrored else np.abs(total)).reshape(len(along), samples)
+    return np.stack([top * first_fall(curves, level) for level in contrasts], axis=-1)

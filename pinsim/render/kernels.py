@@ -131,9 +131,7 @@ def chebyshev_values(count: int, low: float, high: float, place: Array) -> NDArr
         return np.ones((*place.shape, count), np.float32) * (np.arange(count) == 0)
     unit = np.clip((2.0 * place - low - high) / (high - low), -1.0, 1.0)
     values: NDArray[np.float32]
-    values = np.polynomial.chebyshev.chebvander(unit, count - 1).astype(
-        np.float32
-    )
+    values = np.polynomial.chebyshev.chebvander(unit, count - 1).astype(np.float32)
     return values
 
 

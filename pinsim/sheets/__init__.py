@@ -1,7 +1,8 @@
-"""Several pictures on one sheet, with captions that can be read without the manual.
+"""Pictures on a sheet, with captions that can be read without the manual.
 
 side_by_side.py  two designs, the same part of the scene, with details enlarged
 contact.py       scenes down, designs across
+hole_overlay.py  a traced hole drawn over its scan
 lettering.py     the sheet itself: paper, captions, frames, saving
 """
 

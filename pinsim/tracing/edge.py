@@ -182,10 +182,11 @@ class _Surface:
         design = np.stack(terms((y - middle[0]) / scale, (x - middle[1]) / scale), axis=1)
         weight: Array = np.ones(len(y))
         spread = 0.0
-        factors = np.zeros(design.shape[1])
+        factors: Array = np.zeros(design.shape[1])
         for turn in range(12):
             root = np.sqrt(weight)[:, None]
-            factors = np.linalg.lstsq(design * root, light * root[:, 0], rcond=None)[0]
+            solved = np.linalg.lstsq(design * root, light * root[:, 0], rcond=None)[0]
+            factors = np.asarray(solved, np.float64)
             rest: Array = np.abs(light - design @ factors)
             spread = max(1.4826 * float(np.median(rest)), 1e-6)
             # First the least absolute errors, then nothing that lies far off: dust, scratches.

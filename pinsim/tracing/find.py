@@ -25,6 +25,8 @@ _COARSE_PX = 1200
 _LEAST_CONTRAST = 2.5
 # Against the whole range of light; lamps from one side alone give spots of hundredths.
 _LEAST_STEP = 0.06
+# What runs out of the picture is called a cut hole only if it is as clear as one.
+_CUT_STEPS = 4.0
 # Smaller than any hole that could be measured, larger than dust.
 _LEAST_IN_PLATE_PX = 12
 # Spots this many times smaller than the largest are dust.
@@ -79,7 +81,7 @@ def find_hole(light: Light, polarity: Polarity | None, where: str) -> Found:
         for one in tried:
             inner, at_edge = _spots(smooth, threshold, one, least)
             by_threshold[-1] += inner
-            cut += at_edge
+            cut += [spot for spot in at_edge if spot.contrast > _CUT_STEPS * least]
     best = _best(by_threshold, coarse.shape, step)
     _refuse_cut(best, cut, step, where)
     if not best:
@@ -226,7 +228,7 @@ def _is_plate(spot: _Spot, every: list[_Spot], shape: tuple[int, ...], step: int
     if bottom - top < 0.6 * shape[0] or right - left < 0.6 * shape[1]:
         return False
     if not any(
-        _LEAST_IN_PLATE_PX <= other.size * step
+        other.size * step >= _LEAST_IN_PLATE_PX
         and other.size < 0.8 * spot.size
         and top < other.centre[0] < bottom
         and left < other.centre[1] < right

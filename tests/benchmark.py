@@ -1,0 +1,178 @@
+"""Speed and memory as ratios measured in one run: `python tests/benchmark.py`. Not a test.
+
+Absolute times of a shared machine mean little; each figure stands beside what it is measured
+against, the two timed in turn, and the median of the pairs is printed with its range.
+"""
+
+import os
+
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # as the command line sets it
+
+import statistics
+import subprocess
+import sys
+import tempfile
+import time
+import tracemalloc
+from collections.abc import Callable
+from pathlib import Path
+
+import numpy as np
+from PIL import Image
+from scipy import fft
+
+RUNS = 7
+
+
+def timed(work: Callable[[], object]) -> float:
+    start = time.perf_counter()
+    work()
+    return time.perf_counter() - start
+
+
+def ratio(name: str, ours: Callable[[], object], theirs: Callable[[], object], asked: str) -> None:
+    ours(), theirs()  # warm the disk's cache and every lazy import
+    pairs = [(timed(ours), timed(theirs)) for _ in range(RUNS)]
+    ratios = sorted(a / b for a, b in pairs)
+    print(
+        f"{name}: ratio {statistics.median(ratios):.2f} ({ratios[0]:.2f} to {ratios[-1]:.2f}); "
+        f"medians {statistics.median(a for a, _ in pairs):.3f} s against "
+        f"{statistics.median(b for _, b in pairs):.3f} s; asked: {asked}"
+    )
+
+
+def process(*arguments: str) -> None:
+    subprocess.run([sys.executable, *arguments], check=True, stdout=subprocess.DEVNULL)
+
+
+def transfer_functions() -> None:
+    from pinsim.material import material
+    from pinsim.optics import round_otf
+
+    channels = material("colour").channels
+    frequency = np.linspace(0.0, 12.0, 400)
+
+    def work() -> None:
+        for channel in channels:
+            for wavelength in channel.wavelengths_nm:
+                round_otf(
+                    frequency, diameter_mm=0.3, focal_length_mm=60.0, wavelength_nm=wavelength
+                )
+
+    work()
+    times = [timed(work) * 1000.0 for _ in range(RUNS)]
+    print(
+        f"27 transfer functions of 400 frequencies: {statistics.median(times):.1f} ms "
+        f"({min(times):.1f} to {max(times):.1f}); asked: under 30 ms"
+    )
+
+
+PLAIN_SHRINK = """
+import sys
+from PIL import Image
+image = Image.open(sys.argv[1])
+width = int(sys.argv[2])
+size = (width, round(width * image.height / image.width))
+image.convert("RGB").resize(size, Image.Resampling.LANCZOS).save(sys.argv[3])
+"""
+
+
+def phone_photo(path: Path) -> None:
+    """Write a 24 megapixel JPEG with an ordinary photo's detail: a sample scene, enlarged."""
+    from pinsim.samples import names
+
+    photo = Image.open(names("scene")["courtyard"].parent / "photo.jpg")
+    photo.resize((6000, 4000), Image.Resampling.BICUBIC).save(path, quality=92)
+
+
+def whole_preview(folder: Path) -> None:
+    photo = folder / "24mp.jpg"
+    phone_photo(photo)
+    for camera in ("body-cap", "square-box"):
+        for suffix in ("jpg", "png"):
+            ours, theirs = folder / f"ours.{suffix}", folder / f"theirs.{suffix}"
+            arguments = ("preview", str(photo), f"sample:{camera}", "--view", "75deg")
+            process("-m", "pinsim", *arguments, "-o", str(ours), "--overwrite")
+            width = Image.open(ours).width
+            ratio(
+                f"preview of 24 megapixels, {camera}, {width} px .{suffix}",
+                lambda a=arguments, o=ours: process(
+                    "-m", "pinsim", *a, "-o", str(o), "--overwrite"
+                ),
+                lambda w=width, t=theirs: process("-c", PLAIN_SHRINK, str(photo), str(w), str(t)),
+                "at most 1.5",
+            )
+
+
+def start_up() -> None:
+    process("-m", "pinsim", "--help")
+    pairs = [
+        (timed(lambda: process("-m", "pinsim", "--help")), timed(lambda: process("-c", "pass")))
+        for _ in range(RUNS)
+    ]
+    over = [a - b for a, b in pairs]
+    print(
+        f"pinsim --help over a bare interpreter: {statistics.median(over):.3f} s "
+        f"({min(over):.3f} to {max(over):.3f}); asked: 0.15 s"
+    )
+
+
+def varying_kernel() -> None:
+    from pinsim.camera import Camera, Film, Hole
+    from pinsim.render import kernels
+    from pinsim.render.illuminate import illuminate
+    from pinsim.render.plan import make_plan
+    from pinsim.render.project import project
+    from pinsim.render.spread import spread
+    from pinsim.scene import Scene
+
+    side = 1500
+    rng = np.random.default_rng(1)
+    light = rng.random((1600, 1600, 3), np.float32)
+    scene = Scene.from_light(light, horizontal_view_deg=52.0)
+    camera = Camera(
+        focal_length_mm=60.0, hole=Hole(diameter_mm=0.3), film=Film(width_mm=59.5, height_mm=59.5)
+    )
+    plan = make_plan(scene, camera)
+    view = illuminate(project(scene, plan))
+    frame = rng.random((3, side, side), np.float32)
+    kernel = rng.random((3, side, side), np.float32)
+
+    def plain() -> None:
+        # One same-size convolution of three channels: both transforms, product, and back.
+        product = fft.rfft2(frame, workers=2)
+        product *= fft.rfft2(kernel, workers=2)
+        fft.irfft2(product, s=(side, side), workers=2)
+
+    print(f"varying kernel: frame {plan.shape}, with margins {plan.padded}")
+    ratio("varying kernel, three channels", lambda: spread(view), plain, "at most 8")
+
+    def prepare() -> None:
+        kernels._prepared.cache_clear()
+        make_plan(scene, camera)
+
+    ratio("preparing its kernels", prepare, plain, "at most 8, once for each design")
+    tracemalloc.start()
+    before = tracemalloc.get_traced_memory()[0]
+    tracemalloc.reset_peak()
+    spread(view)
+    peak = tracemalloc.get_traced_memory()[1] - before
+    own = view.light.nbytes
+    tracemalloc.stop()
+    frame_bytes = plan.shape[0] * plan.shape[1] * 3 * 4
+    print(
+        f"memory while spreading, scene on the film included: {(peak + own) / frame_bytes:.1f} times "
+        "the frame; asked: at most 10"
+    )
+
+
+def main() -> None:
+    transfer_functions()
+    start_up()
+    varying_kernel()
+    with tempfile.TemporaryDirectory() as folder:
+        whole_preview(Path(folder))
+
+
+if __name__ == "__main__":
+    main()
