@@ -14,6 +14,7 @@ from pinsim.colour import srgb_to_linear
 from pinsim.errors import OutputError
 
 PICTURE_SUFFIXES = (".png", ".jpg", ".jpeg", ".tif", ".tiff")
+EXPOSURE_SUFFIXES = (*PICTURE_SUFFIXES, ".npz")
 BITS = ("8", "16", "float")
 _INCH_MM = 25.4
 

@@ -4,38 +4,119 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+import numpy as np
+
 from pinsim import optics
-from pinsim.best import light_for
+from pinsim.best import CONTRASTS, FrameBest, FrameDetail, Tolerance, light_for
 from pinsim.camera import Camera
+from pinsim.classical import Classical, classical_holes
 from pinsim.exposure import metered_time_s
+from pinsim.optics.sharpness import detail_anywhere
+from pinsim.tools import CAUTION, Tool, how_to_make, tools_around
 
 CONTRAST = 0.2
 USUAL_DISTANCES_MM = (math.inf, 2000.0, 500.0)
 USUAL_EV = (15.0, 12.0, 9.0)
+# An outline of the hole's own is transformed anew for each wavelength, so it takes few of them.
+_WAVELENGTHS = {"traced": 3}
+_SAMPLES = 160
+
+Vector = tuple[float, float]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class AtDistance:
-    """Sharpness in the middle of the film for objects at one distance.
+    """Sharpness where the hole's axis meets the film, for objects at one distance.
 
-    spot_mm : diameter of the circle on the film that holds half of a point's light.
-    detail_cycles_mm : finest detail at 20 % contrast, on the film; object_mm : one such cycle there.
-    best_hole_mm : the hole that would draw the finest detail at this distance.
+    spot_mm : diameter of the circle on the film that holds half of a point's light; of a hole that is
+    not round, for the round one of the same area. right_cycles_mm, up_cycles_mm : finest detail at
+    20 % contrast, on the film, repeating to the right and upwards; detail_cycles_mm the poorer.
+    object_mm : one such cycle there. best_hole_mm : the round hole that would draw the finest detail
+    at this distance.
     """
 
     distance_mm: float
     spot_mm: float
     detail_cycles_mm: float
+    right_cycles_mm: float
+    up_cycles_mm: float
     object_mm: float
     best_hole_mm: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class AtPlace:
+    """Light and sharpness at one place of the film, for the first distance.
+
+    field_deg : from the hole's axis. falloff_stops : below the axis, by distance, slant and plate;
+    infinity where no light comes. Finest detail at 20 % contrast in cycles/mm along the film: to the
+    right, upwards, outwards from the axis (tangential) and around it (sagittal).
+    """
+
+    name: str
+    right_mm: float
+    up_mm: float
+    field_deg: float
+    falloff_stops: float
+    right_cycles_mm: float
+    up_cycles_mm: float
+    tangential_cycles_mm: float
+    sagittal_cycles_mm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Choice:
+    """One hole that could be made, against the best over the frame.
+
+    detail_loss_share : of the finest detail over the frame at 20 % contrast. exposure_stops : more
+    light than the best hole passes; negative is less. unsure_mm : how far its size may be off.
+    """
+
+    label: str
+    diameter_mm: float
+    unsure_mm: float
+    detail_loss_share: float
+    exposure_stops: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Advice:
+    """Which hole, and what a departure from it costs; for the first distance.
+
+    best : for each contrast. tolerance : of the best over the frame at 20 % contrast. own : the
+    design's hole, as the round one of its area. best_choice, choices : the best, and drills and
+    needles around both.
+    classical : what books give. note : how to make the best hole if no drill does.
+    """
+
+    distance_mm: float
+    best: tuple[FrameBest, ...]
+    tolerance: Tolerance
+    own: Choice
+    best_choice: Choice
+    choices: tuple[Choice, ...]
+    classical: tuple[Classical, ...]
+    note: str
+    caution: str = CAUTION
+
+    @property
+    def best_hole_mm(self) -> float:
+        """The best compromise over the frame at 20 % contrast."""
+        return self.tolerance.best_mm
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Figures:
-    """What pinsim says of a design; lengths mm, angles deg, times s."""
+    """What pinsim says of a design; lengths mm, angles deg, times s.
+
+    places, advice : empty and None when only the quick figures were asked for.
+    """
 
     name: str
     hole_mm: float
+    hole: str
+    round_hole: bool
+    plate_thickness_mm: float
     focal_length_mm: float
     f_number: float
     frame: str
@@ -51,6 +132,8 @@ class Figures:
     corner_falloff_stops: float
     distances: tuple[AtDistance, ...]
     times_s: tuple[tuple[float, float], ...]
+    places: tuple[AtPlace, ...] = ()
+    advice: Advice | None = None
 
     @property
     def far(self) -> AtDistance:
@@ -67,42 +150,17 @@ def figures(
 ) -> Figures:
     """Return a camera's figures for its material's light, or for one wavelength.
 
-    best : look for the best hole too (the slow part; NaN without it).
+    best : also look for the best hole, what others cost, and at places off the middle (the slow
+    part; NaN, None and nothing without it).
     """
     light = light_for(wavelength_nm, camera.material_name)
-    mean_nm = float(light.shares @ light.wavelengths_nm)
-    diameter, depth = camera.hole.diameter_mm, camera.focal_length_mm
-    rows = []
-    for distance in distances_mm:
-        detail = optics.finest_detail(
-            diameter_mm=diameter,
-            focal_length_mm=depth,
-            light=light,
-            distance_mm=distance,
-            contrast=CONTRAST,
-        )
-        rows.append(
-            AtDistance(
-                distance_mm=distance,
-                spot_mm=optics.spot_diameter_mm(
-                    diameter_mm=diameter, focal_length_mm=depth, light=light, distance_mm=distance
-                ),
-                detail_cycles_mm=detail,
-                object_mm=distance / depth / detail,
-                best_hole_mm=optics.best_diameter_mm(
-                    focal_length_mm=depth, light=light, distance_mm=distance, contrast=CONTRAST
-                )
-                if best
-                else math.nan,
-            )
-        )
-    rays = camera.rays_to(camera.far_corner)
-    clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
-    corner = float(rays.falloff[0] * clear[0])
     return Figures(
         name=camera.name,
-        hole_mm=diameter,
-        focal_length_mm=depth,
+        hole_mm=camera.hole.diameter_mm,
+        hole=camera.hole.label,
+        round_hole=camera.hole.shape == "round",
+        plate_thickness_mm=camera.plate_thickness_mm,
+        focal_length_mm=camera.focal_length_mm,
         f_number=camera.f_number,
         frame=camera.film.label,
         frame_width_mm=camera.film.width_mm,
@@ -111,10 +169,151 @@ def figures(
         horizontal_view_deg=camera.horizontal_view_deg,
         vertical_view_deg=camera.vertical_view_deg,
         diagonal_view_deg=camera.diagonal_view_deg,
-        mean_wavelength_nm=mean_nm,
-        cutoff_cycles_mm=diameter / (mean_nm * 1e-6 * depth),
+        mean_wavelength_nm=light.mean_nm,
+        cutoff_cycles_mm=camera.hole.greatest_mm / (light.mean_nm * 1e-6 * camera.focal_length_mm),
         corner_deg=camera.corner_deg,
-        corner_falloff_stops=-math.log2(corner) if corner > 0.0 else math.inf,
-        distances=tuple(rows),
+        corner_falloff_stops=_stops_below(_light_share(camera, *camera.far_corner)),
+        distances=tuple(_at_distance(camera, light, one, best=best) for one in distances_mm),
         times_s=tuple((ev, metered_time_s(camera, ev)) for ev in USUAL_EV),
+        places=_places(camera, light, distances_mm[0]) if best else (),
+        advice=_advice(camera, light, distances_mm[0]) if best else None,
+    )
+
+
+def _light_share(camera: Camera, across: float, up: float) -> float:
+    """Return the light at a place in the frame over that on the axis."""
+    rays = camera.rays_to((across, up))
+    clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
+    return float(rays.falloff[0] * clear[0])
+
+
+def _stops_below(share: float) -> float:
+    return -math.log2(share) if share > 0.0 else math.inf
+
+
+def _details(
+    camera: Camera,
+    light: optics.Light,
+    point_mm: Vector,
+    directions: Sequence[Vector],
+    distance_mm: float,
+) -> list[float]:
+    """Return the finest detail of the camera's own hole along directions at a film point."""
+    found = detail_anywhere(
+        np.array(directions),
+        rays=camera.surface.chief_rays(*point_mm),
+        opening=camera.opening,
+        plate_thickness_mm=camera.plate_thickness_mm,
+        light=light.condensed(_WAVELENGTHS.get(camera.hole.shape, 5)),
+        distance_mm=distance_mm,
+        contrasts=(CONTRAST,),
+        samples=_SAMPLES,
+    )
+    return [float(one) for one in found[:, 0]]
+
+
+def _at_distance(
+    camera: Camera, light: optics.Light, distance_mm: float, *, best: bool
+) -> AtDistance:
+    diameter, depth = camera.hole.diameter_mm, camera.focal_length_mm
+    if camera.hole.shape == "round":
+        right = up = optics.finest_detail(
+            diameter_mm=diameter,
+            focal_length_mm=depth,
+            light=light,
+            distance_mm=distance_mm,
+            contrast=CONTRAST,
+        )
+    else:
+        right, up = _details(camera, light, (0.0, 0.0), [(1.0, 0.0), (0.0, 1.0)], distance_mm)
+    return AtDistance(
+        distance_mm=distance_mm,
+        spot_mm=optics.spot_diameter_mm(
+            diameter_mm=diameter, focal_length_mm=depth, light=light, distance_mm=distance_mm
+        ),
+        detail_cycles_mm=min(right, up),
+        right_cycles_mm=right,
+        up_cycles_mm=up,
+        object_mm=distance_mm / depth / min(right, up),
+        best_hole_mm=optics.best_diameter_mm(
+            focal_length_mm=depth, light=light, distance_mm=distance_mm, contrast=CONTRAST
+        )
+        if best
+        else math.nan,
+    )
+
+
+def usual_places(camera: Camera) -> dict[str, Vector]:
+    """Return the places that stand for a frame, as for Camera.frame_point_mm, by name.
+
+    Of two edges or four corners the one farthest from the hole's axis.
+    """
+    across, up = camera.far_corner
+    return {
+        "centre": (0.0, 0.0),
+        "left edge" if across < 0.0 else "right edge": (across, 0.0),
+        "lower edge" if up < 0.0 else "upper edge": (0.0, up),
+        "corner": (across, up),
+    }
+
+
+def outwards(point_mm: Vector) -> Vector:
+    """Return the unit direction along the film away from the axis; to the right on the axis."""
+    far = math.hypot(*point_mm)
+    return (point_mm[0] / far, point_mm[1] / far) if far > 1e-9 else (1.0, 0.0)
+
+
+def _places(camera: Camera, light: optics.Light, distance_mm: float) -> tuple[AtPlace, ...]:
+    found = []
+    for name, place in usual_places(camera).items():
+        point = camera.frame_point_mm(*place)
+        x, y = outwards(point)
+        right, up, tangential, sagittal = _details(
+            camera, light, point, [(1.0, 0.0), (0.0, 1.0), (x, y), (-y, x)], distance_mm
+        )
+        ahead = float(camera.rays_to(place).direction[0, 2])
+        found.append(
+            AtPlace(
+                name=name,
+                right_mm=point[0],
+                up_mm=point[1],
+                field_deg=math.degrees(math.acos(min(ahead, 1.0))),
+                falloff_stops=_stops_below(_light_share(camera, *place)),
+                right_cycles_mm=right,
+                up_cycles_mm=up,
+                tangential_cycles_mm=tangential,
+                sagittal_cycles_mm=sagittal,
+            )
+        )
+    return tuple(found)
+
+
+def _advice(camera: Camera, light: optics.Light, distance_mm: float) -> Advice:
+    frame = FrameDetail(camera, light=light, distance_mm=distance_mm)
+    tolerance = frame.tolerance(CONTRAST)
+    best_mm = tolerance.best_mm
+    finest = frame.detail(best_mm, CONTRAST)
+
+    def choice(label: str, diameter_mm: float, unsure_mm: float = 0.0) -> Choice:
+        return Choice(
+            label=label,
+            diameter_mm=diameter_mm,
+            unsure_mm=unsure_mm,
+            detail_loss_share=1.0 - frame.detail(diameter_mm, CONTRAST) / finest,
+            exposure_stops=2.0 * math.log2(diameter_mm / best_mm),
+        )
+
+    def with_tool(tool: Tool) -> Choice:
+        return choice(tool.label, tool.diameter_mm, tool.unsure_mm)
+
+    own_mm = camera.hole.diameter_mm
+    return Advice(
+        distance_mm=distance_mm,
+        best=tuple(frame.best(contrast) for contrast in CONTRASTS),
+        tolerance=tolerance,
+        own=choice("this design", own_mm),
+        best_choice=choice("best over frame", best_mm),
+        choices=tuple(with_tool(tool) for tool in tools_around((best_mm, own_mm))),
+        classical=classical_holes(camera.focal_length_mm, light=light, distance_mm=distance_mm),
+        note=how_to_make(best_mm),
     )

@@ -1,5 +1,7 @@
 """pinsim preview: one scene through one camera."""
 
+import importlib
+import threading
 from pathlib import Path
 from typing import Any
 
@@ -32,10 +34,7 @@ def command(
     """
     from pinsim.cli.designs import camera_stem, default_output, input_files, load_scene, make_camera
     from pinsim.cli.show import progress_bar, tell
-    from pinsim.files import check_bits, check_target, keep_inputs
-    from pinsim.render.develop import LOOK_TEXT
-    from pinsim.render.picture import SUFFIXES
-    from pinsim.render.preview import preview
+    from pinsim.files import EXPOSURE_SUFFIXES, check_bits, check_target, keep_inputs
     from pinsim.samples import PREFIX
 
     design = make_camera(
@@ -44,10 +43,19 @@ def command(
     stem = Path(scene.removeprefix(PREFIX)).stem
     target = Path(output) if output else default_output(f"{stem}-{camera_stem(camera, design)}")
     inputs = input_files(scene, camera, given["distance_map"])
-    check_target(target, overwrite=overwrite, suffixes=SUFFIXES, inputs=inputs)
+    check_target(target, overwrite=overwrite, suffixes=EXPOSURE_SUFFIXES, inputs=inputs)
     check_bits(target.suffix.lower(), given["bits"])
-    place = load_scene(scene, given)
+    # The renderer's libraries take as long to load as a large photo to decode: both at once.
+    loading = threading.Thread(target=importlib.import_module, args=("pinsim.render.spread",))
+    loading.start()
+    try:
+        place = load_scene(scene, given)
+    finally:
+        loading.join()
     keep_inputs(target, place.files)
+    from pinsim.render.develop import LOOK_TEXT
+    from pinsim.render.preview import preview
+
     with progress_bar(place.name) as report:
         picture = preview(
             place,

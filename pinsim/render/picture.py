@@ -14,8 +14,6 @@ from pinsim.render.develop import LOOK_TEXT, Look, develop, turn
 
 Float = NDArray[np.float32]
 
-SUFFIXES = (*files.PICTURE_SUFFIXES, ".npz")
-
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Picture:
@@ -60,7 +58,7 @@ class Picture:
         exposure itself, linear and upright. Raises OutputError, and then nothing is written.
         """
         target = Path(path)
-        files.check_target(target, overwrite=overwrite, suffixes=SUFFIXES)
+        files.check_target(target, overwrite=overwrite, suffixes=files.EXPOSURE_SUFFIXES)
         files.write_whole(target, self._writer(target.suffix.lower(), bits), overwrite=overwrite)
 
     def _writer(self, suffix: str, bits: str | None) -> Any:

@@ -27,11 +27,11 @@ Kernel = NDArray[np.inexact[Any]]
 
 _THREADS = 2
 LEAST_RESPONSE = 0.02
-# A large grid is a smooth picture looked at as a whole: it is drawn with fewer modes, an error of
-# 6e-4 of white at the frame's worst point; small grids, where modes cost nothing, with all of them.
+# A large grid is drawn with fewer modes: an rms error of 1e-3 of white at the frame's worst point,
+# less than an 8-bit file rounds by. Small grids, where modes cost nothing, are drawn with all.
 LARGE_GRID_PX = 600_000
-LARGE_PICTURE_RMS = 6e-4
-LARGE_SINGLE_OTF = 2e-2
+LARGE_PICTURE_RMS = 1e-3
+LARGE_SINGLE_OTF = 4e-2
 # Cells of the table a mode is read from, along each axis of frequency.
 _TABLE_CELLS = 96
 

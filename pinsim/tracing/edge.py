@@ -77,7 +77,7 @@ def trace_edge(light: Light, found: Found, where: str) -> Edge:
     bright = part[inside] if found.polarity == "bright" else part[plate & ~inside]
     top, _, left, _ = _window(light.shape, found)
     return Edge(
-        outline_px=without_noise(contour) + np.array([left, top]),
+        outline_px=without_noise(contour, noise / slope) + np.array([left, top]),
         blur_px=math.sqrt(max(blur**2 - smoothing**2 - 1.0 / 6.0, 0.0)),
         noise_px=noise / slope,
         step=float(np.median(part[inside]) - np.median(part[plate & ~inside])),

@@ -16,6 +16,7 @@ Array = NDArray[np.float64]
 _SHAPE_WAVES = 40
 # And noise that is shorter than this is smoothed from the outline itself.
 _NOISE_PX = 4.0
+_LITTLE_NOISE_PX = 0.05
 # Corners of the convex hull that are compared with each other; a circle's diameters keep 1e-5.
 _HULL_POINTS = 1000
 
@@ -58,10 +59,14 @@ def smoothed(outline: Array, shortest: float) -> Array:
     return np.stack([wave.real, wave.imag], axis=1)
 
 
-def without_noise(outline_px: Array) -> Array:
-    """Return an outline in pixels without waves too short for its picture to tell."""
-    # A small hole keeps at least 24 harmonics, so that its corners stay.
-    return smoothed(outline_px, min(_NOISE_PX, perimeter(outline_px) / 24.0))
+def without_noise(outline_px: Array, noise_px: float) -> Array:
+    """Return an outline in pixels without waves too short for its picture to tell.
+
+    noise_px : what noise moves single points by; more of it is averaged over longer stretches.
+    """
+    shortest = _NOISE_PX * max(1.0, (noise_px / _LITTLE_NOISE_PX) ** 2)
+    # A small or noisy hole keeps at least 24 harmonics, so that its corners stay.
+    return smoothed(outline_px, min(shortest, perimeter(outline_px) / 24.0))
 
 
 def shape_perimeter(outline: Array) -> float:
