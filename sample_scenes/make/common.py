@@ -413,12 +413,12 @@ class Relief:
         return columns / self.px_per_m, rows / self.px_per_m
 
 
-def lay_courses(
+def lay_rows(
     rng: np.random.Generator,
     x: Array,
     y: Array,
     *,
-    course_m: tuple[float, float],
+    row_m: tuple[float, float],
     length_m: tuple[float, float],
     running: bool,
     size_m: tuple[float, float],
@@ -428,9 +428,9 @@ def lay_courses(
     x, y : places in metres from the upper left corner; the sides are left, right, top, bottom.
     """
     width_m, height_m = size_m
-    edges = [-course_m[1] * rng.random()]
-    while edges[-1] < height_m + course_m[1]:
-        edges.append(edges[-1] + rng.uniform(*course_m))
+    edges = [-row_m[1] * rng.random()]
+    while edges[-1] < height_m + row_m[1]:
+        edges.append(edges[-1] + rng.uniform(*row_m))
     row = np.clip(np.searchsorted(edges, y.ravel()) - 1, 0, len(edges) - 2).reshape(y.shape)
     ident = np.zeros(x.shape, np.int32)
     left, right = np.zeros(x.shape, np.float32), np.zeros(x.shape, np.float32)
@@ -457,7 +457,7 @@ def masonry(
     width_m: float,
     height_m: float,
     px_per_m: float,
-    course_m: tuple[float, float],
+    row_m: tuple[float, float],
     length_m: tuple[float, float],
     palette: Sequence[Vector],
     running: bool = False,
@@ -471,11 +471,11 @@ def masonry(
     colour_spread: float = 0.14,
     stain: float = 0.25,
 ) -> Relief:
-    """Return laid stones or bricks: courses of a height range, stones of a length range.
+    """Return laid stones or bricks: rows of a height range, stones of a length range.
 
     running : half-stone bond (bricks) instead of chance joints. uneven_m : how far stones
     stand out; grain_m : roughness of their faces; stain 0..1 : weathering, streaks, soot.
-    For brick: course (0.075, 0.075), length (0.225, 0.225), running; for paving: large ones.
+    For brick: row_m (0.075, 0.075), length_m (0.225, 0.225), running; for paving: large ones.
     """
     shape = (round(height_m * px_per_m), round(width_m * px_per_m))
     px = px_per_m
@@ -487,8 +487,8 @@ def masonry(
     size = max(length_m[1] * px, 8)
     x = x + wobble_m * noise(rng, shape, largest_px=size, smallest_px=size / 12)
     y = y + wobble_m * noise(rng, shape, largest_px=size, smallest_px=size / 12)
-    ident, box_m, count = lay_courses(
-        rng, x, y, course_m=course_m, length_m=length_m, running=running, size_m=(width_m, height_m)
+    ident, box_m, count = lay_rows(
+        rng, x, y, row_m=row_m, length_m=length_m, running=running, size_m=(width_m, height_m)
     )
     left, right, top, bottom = box_m
     half_w, half_h = (right - left) / 2, (bottom - top) / 2

@@ -54,7 +54,7 @@ def brick(rng: np.random.Generator, wide: float, tall: float, px: float) -> c.Re
         width_m=wide,
         height_m=tall,
         px_per_m=px,
-        course_m=(0.068, 0.070),
+        row_m=(0.068, 0.070),
         length_m=(0.225, 0.235),
         running=True,
         palette=BRICKS,
@@ -67,13 +67,13 @@ def brick(rng: np.random.Generator, wide: float, tall: float, px: float) -> c.Re
 
 
 def rubble(rng: np.random.Generator, wide: float, tall: float, px: float) -> c.Relief:
-    """Return a wall of roughly coursed stones."""
+    """Return a wall of stones laid in rough rows."""
     return c.masonry(
         rng,
         width_m=wide,
         height_m=tall,
         px_per_m=px,
-        course_m=(0.14, 0.30),
+        row_m=(0.14, 0.30),
         length_m=(0.18, 0.55),
         palette=RUBBLE,
         joint_m=0.02,
@@ -387,7 +387,7 @@ def paving(rng: np.random.Generator, detail: float) -> Objects:
             width_m=wide,
             height_m=far - near,
             px_per_m=px,
-            course_m=(0.5, 0.8),
+            row_m=(0.5, 0.8),
             length_m=(8.0, 9.0),
             palette=[(0.36, 0.33, 0.28), (0.32, 0.30, 0.26)],
             joint_m=0.012,
