@@ -249,7 +249,7 @@ class FrameDetail:
         """Return where detail falls to a level between two holes, each (diameter, detail)."""
         for _ in range(3):
             share = (inner[1] - level) / (inner[1] - outer[1])
-            size = inner[0] * (outer[0] / inner[0]) ** share
+            size = inner[0] * math.exp(share * math.log(outer[0] / inner[0]))
             found = size, self.detail(size, contrast)
             if found[1] > level:
                 inner = found

@@ -16,9 +16,10 @@ _GREEN_MM = 550e-6
 class Rule:
     """One author's rule.
 
-    constant : k, the hole's diameter over sqrt(lambda f). best_for, criterion : what it is best at, in two
-    words and with the constant computed for that in pure light. source : where it was published and how surely it is known. knows_light : False where the rule
-    names no wavelength; its k is then that of 550 nm.
+    constant : k, the hole's diameter over sqrt(lambda f). best_for, criterion : what it is best at,
+    in two words, and with the constant computed for that need in light of one colour. source : where
+    it was published, and how surely it is known. knows_light : False where the rule names no
+    wavelength; its k is then that of 550 nm.
     """
 
     author: str

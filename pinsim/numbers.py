@@ -17,8 +17,9 @@ from pinsim.tools import CAUTION, Tool, how_to_make, tools_around
 CONTRAST = 0.2
 USUAL_DISTANCES_MM = (math.inf, 2000.0, 500.0)
 USUAL_EV = (15.0, 12.0, 9.0)
-# An outline of the hole's own is transformed anew for each wavelength, so it takes few of them.
-_WAVELENGTHS = {"traced": 3}
+# Wavelengths that stand for a light, for the camera's own hole. An outline is transformed anew for
+# each, so it takes few; a slit's curve ends in a corner for each, so it takes many.
+_WAVELENGTHS = {"round": 5, "oval": 5, "slit": 12, "traced": 3}
 _SAMPLES = 160
 
 Vector = tuple[float, float]
@@ -191,6 +192,11 @@ def _stops_below(share: float) -> float:
     return -math.log2(share) if share > 0.0 else math.inf
 
 
+def light_for_hole(camera: Camera, light: optics.Light) -> optics.Light:
+    """Return a light's few wavelengths that are enough for the camera's own hole."""
+    return light.condensed(_WAVELENGTHS[camera.hole.shape])
+
+
 def _details(
     camera: Camera,
     light: optics.Light,
@@ -204,7 +210,7 @@ def _details(
         rays=camera.surface.chief_rays(*point_mm),
         opening=camera.opening,
         plate_thickness_mm=camera.plate_thickness_mm,
-        light=light.condensed(_WAVELENGTHS.get(camera.hole.shape, 5)),
+        light=light_for_hole(camera, light),
         distance_mm=distance_mm,
         contrasts=(CONTRAST,),
         samples=_SAMPLES,
@@ -241,6 +247,11 @@ def _at_distance(
         if best
         else math.nan,
     )
+
+
+def format_detail(cycles_mm: float) -> str:
+    """Return a frequency for people, with three figures: "4.60", "12.0", "134"."""
+    return f"{cycles_mm:#.3g}".rstrip(".")
 
 
 def usual_places(camera: Camera) -> dict[str, Vector]:

@@ -44,7 +44,7 @@ def test_help_for_a_command_loads_nothing_heavy(command):
     assert loaded_by(f"from pinsim.cli import main; main([{command!r}, '--help'])") == []
 
 
-@pytest.mark.parametrize("command", ["preview", "compare", "contact-sheet", "numbers"])
+@pytest.mark.parametrize("command", ["preview", "compare", "contact-sheet", "numbers", "trace"])
 def test_a_misspelt_quantity_is_refused_before_anything_heavy_is_loaded(command):
     code = f"from pinsim.cli import main; main([{command!r}, '--hole', '0,3mm'])"
     assert loaded_by(code) == []

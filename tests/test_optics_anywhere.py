@@ -6,6 +6,9 @@ Goodman, Introduction to Fourier Optics, 3.5; from memory), computed independent
 transform, no expansion, no code of pinsim. Closed forms have their source beside them.
 """
 
+import json
+from pathlib import Path
+
 import numpy as np
 import pytest
 from reference import rayleigh_sommerfeld as rs
@@ -107,6 +110,56 @@ def compare(
     np.testing.assert_allclose(seen[:2], expected[:2], rtol=OF_THE_MOMENT)
     assert abs(seen[2] - expected[2]) <= OF_THE_MOMENT * expected[:2].min()
     return summed
+
+
+# The yardstick itself first. See reference/ORIGIN.md: a Rayleigh-Sommerfeld integral made by another
+# program, with node counts doubled until nothing moved.
+PRINTED = json.loads(
+    (Path(__file__).parent / "reference" / "psf_reference.json").read_text(encoding="utf-8")
+)["configurations"]
+
+
+@pytest.mark.parametrize("printed", PRINTED, ids=[f"no. {one['id']}" for one in PRINTED])
+def test_the_summed_waves_are_those_of_the_table(printed):
+    hole, z = printed["hole_diameter_mm"], printed["zi_mm"]
+    distance = printed["zo_mm"] or INFINITY
+    radius = np.array(printed["r_mm"])
+    turns = printed["v_per_mm"] * radius.max() / 2 + np.pi * printed["fresnel_number"]
+    image = rs.point_image(
+        rs.lens(hole, hole, count=int(turns + 30)),
+        rs.Film(focal_length_mm=z),
+        film_point_mm=(0.0, 0.0),
+        du_mm=radius,
+        dv_mm=np.zeros(1),
+        wavelength_nm=printed["lambda_nm"],
+        distance_mm=distance,
+    )[0]
+    # The table is |U|^2 over that of the unobstructed wave on the axis, without the film's cosine.
+    thinned = np.pi / 4 * hole**2 * (1 + z / distance) ** 2
+    relative = image * thinned * np.hypot(z, radius) / z
+    expected = np.array(printed["I_rel_unobstructed_rs1_exact"])
+    # 3e-5: the power that enters the hole is taken for that of a wave as strong all over it.
+    np.testing.assert_allclose(relative, expected, atol=3e-5 * expected.max(), rtol=0)
+
+
+@pytest.mark.parametrize("diameter_mm", [0.3, 1.0])
+def test_the_summed_waves_on_the_axis_are_the_closed_form(diameter_mm):
+    """|1 - cos(alpha) exp(i k (R - z))|^2 with cos(alpha) = z/R, R to the rim; plane wave.
+
+    Exact within the integral: Osterberg & Smith, JOSA 51 (1961) 1050 (from memory).
+    """
+    rim = np.hypot(60.0, diameter_mm / 2)
+    wave_number = 2 * np.pi / (550.0 * rs.NM)
+    expected = np.abs(1 - 60.0 / rim * np.exp(1j * wave_number * (rim - 60.0))) ** 2
+    image = rs.point_image(
+        rs.lens(diameter_mm, diameter_mm, count=60),
+        FILMS["flat film"],
+        film_point_mm=(0.0, 0.0),
+        du_mm=np.zeros(1),
+        dv_mm=np.zeros(1),
+        wavelength_nm=550.0,
+    )
+    assert image[0, 0] * np.pi / 4 * diameter_mm**2 == pytest.approx(expected, rel=1e-8)
 
 
 @pytest.mark.parametrize("distance_mm", [INFINITY, 250.0], ids=["far", "250 mm"])
@@ -310,14 +363,14 @@ def test_a_narrow_slit_is_all_diffraction():
     np.testing.assert_allclose(seen, expected, atol=2e-6)
 
 
-@pytest.mark.parametrize(("angle_deg", "power"), [(0.0, 3), (40.0, 3)])
+@pytest.mark.parametrize("angle_deg", [0.0, 40.0])
 @pytest.mark.parametrize("distance_mm", [INFINITY, 250.0])
 def test_a_slit_between_shadow_and_diffraction_is_a_square_pupil_out_of_focus(
-    angle_deg, power, distance_mm
+    angle_deg, distance_mm
 ):
     """Triangle times sinc[m nu (w - s)], s = lambda z nu/cos^3 outwards: Goodman 6.4.4, from memory."""
     cosine = np.cos(np.radians(angle_deg))
-    cutoff = 0.3 * cosine**power / (550.0 * rs.NM * 60.0)
+    cutoff = 0.3 * cosine**3 / (550.0 * rs.NM * 60.0)
     frequency = np.linspace(-1.1, 1.1, 45) * cutoff
     seen = slit_on_flat_film(
         frequency,
@@ -494,22 +547,39 @@ def test_through_a_thick_plate_an_l_shaped_hole_draws_with_what_is_left_of_it():
     compare(bars + foot, hole, film, place)
 
 
-def test_the_film_sees_no_light_beyond_where_the_bore_closes():
-    """tan(theta) = d/t: the two faces' openings no longer overlap (geometry)."""
+@pytest.mark.parametrize(
+    ("kind", "direction"),
+    [("round", (-0.6, 0.8))]
+    + [
+        (kind, direction)
+        for kind in ("round", "oval", "slit", "traced")
+        for direction in ((1.0, 0.0), (0.0, -1.0))
+    ],
+)
+def test_the_film_sees_no_light_beyond_where_the_bore_closes(kind, direction):
+    """tan(theta) = d/t: the two faces' openings no longer overlap (geometry).
+
+    Each hole is 0.3 mm across and the plate 0.3 mm thick, so the bore closes 60 mm off the axis,
+    right and up (for the round one: anywhere).
+    """
     film = FILMS["flat film"]
-    camera = camera_with(pinsim.Hole(diameter_mm=0.3, plate_thickness_mm=0.3), film)
-    frequency = np.array([0.0, 0.5, 2.0])
-    for direction in ((1.0, 0.0), (0.0, 1.0), (-0.6, 0.8)):
-        for ratio, lit in ((0.98, True), (1.02, False)):
-            # d/t = 1: the bore closes at 45 degrees, 60 mm off the axis.
-            seen = film_otf(
-                frequency,
-                0.0,
-                camera=camera,
-                film_point_mm=(60.0 * ratio * direction[0], 60.0 * ratio * direction[1]),
-                wavelength_nm=550.0,
-            )
-            if lit:
-                assert seen[0] == pytest.approx(1.0, abs=1e-9)
-            else:
-                np.testing.assert_array_equal(seen, 0.0)
+    outline = traced_l().outline  # 0.3 mm wide and high
+    hole = {
+        "round": pinsim.Hole(diameter_mm=0.3, plate_thickness_mm=0.3),
+        "oval": pinsim.Hole.oval(0.3, 0.3, plate_thickness_mm=0.3),
+        "slit": pinsim.Hole.slit(0.3, 0.3, plate_thickness_mm=0.3),
+        "traced": pinsim.Hole.traced(outline, plate_thickness_mm=0.3),
+    }[kind]
+    for ratio, expected in ((0.98, 1.0), (1.02, 0.0), (1.3, 0.0)):
+        seen = film_otf(
+            np.array([0.0, 0.01, 30.0]),
+            0.0,
+            camera=camera_with(hole, film),
+            film_point_mm=(60.0 * ratio * direction[0], 60.0 * ratio * direction[1]),
+            wavelength_nm=550.0,
+        )
+        assert seen[0] == pytest.approx(
+            expected, abs=1e-4
+        )  # what a thick plate's quadrature states
+        if expected == 0.0:
+            np.testing.assert_array_equal(seen, 0.0)

@@ -182,6 +182,7 @@ def _darker(stops: float) -> str:
 
 
 def _distances(console: "Console", figures: "Figures") -> None:
+    from pinsim.numbers import format_detail
     from pinsim.units import format_length
 
     console.print(
@@ -201,9 +202,9 @@ def _distances(console: "Console", figures: "Figures") -> None:
             else format_length(row.object_mm)
         )
         detail = (
-            f"{row.detail_cycles_mm:.3g} cycles/mm"
+            f"{format_detail(row.detail_cycles_mm)} cycles/mm"
             if figures.round_hole
-            else f"{row.right_cycles_mm:.3g}, {row.up_cycles_mm:.3g} c/mm"
+            else f"{format_detail(row.right_cycles_mm)}, {format_detail(row.up_cycles_mm)} c/mm"
         )
         table.add_row(
             format_length(row.distance_mm),
@@ -216,6 +217,7 @@ def _distances(console: "Console", figures: "Figures") -> None:
 
 
 def _places(console: "Console", figures: "Figures", advice: "Advice") -> None:
+    from pinsim.numbers import format_detail
     from pinsim.units import format_length
 
     console.print(
@@ -234,7 +236,7 @@ def _places(console: "Console", figures: "Figures", advice: "Advice") -> None:
             place.name,
             f"{place.field_deg:.0f} deg",
             _darker(place.falloff_stops),
-            *("-" if one <= 0.0 else f"{one:.3g}" for one in pair),
+            *("-" if one <= 0.0 else format_detail(one) for one in pair),
         )
     console.print(table)
     if figures.round_hole:
@@ -305,6 +307,8 @@ def _choices(console: "Console", advice: "Advice") -> None:
 
 
 def _classical(console: "Console", figures: "Figures", advice: "Advice") -> None:
+    from pinsim.numbers import format_detail
+
     console.print(
         f"\nWhat books give for this depth, d = k sqrt(lambda f) at "
         f"{figures.mean_wavelength_nm:.0f} nm (cycles/mm in the middle):"
@@ -317,7 +321,7 @@ def _classical(console: "Console", figures: "Figures", advice: "Advice") -> None
             row.year,
             f"{row.constant:.2f}",
             f"{row.diameter_mm:.3f} mm",
-            f"{row.detail_cycles_mm:.3g}",
+            format_detail(row.detail_cycles_mm),
             row.best_for,
         )
     console.print(table)

@@ -102,12 +102,14 @@ def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
     unit = np.divide(along, reach[:, None], out=np.zeros_like(along), where=reach[:, None] > 0)
     unit[reach == 0.0, 0] = 1.0
     across = np.stack([-unit[:, 1], unit[:, 0]], axis=1)
-    parts = (
-        reach,
-        np.einsum("ij,ij->i", other, unit),
-        np.einsum("ij,ij->i", other, across),
-        np.einsum("ij,ij->i", wave, unit),
-        np.einsum("ij,ij->i", wave, across),
+    parts = np.stack(
+        [
+            reach,
+            np.einsum("ij,ij->i", other, unit),
+            np.einsum("ij,ij->i", other, across),
+            np.einsum("ij,ij->i", wave, unit),
+            np.einsum("ij,ij->i", wave, across),
+        ]
     )
     result = np.zeros(len(shift))
     meets = np.flatnonzero(reach < 1.0)
@@ -122,44 +124,58 @@ def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
             count = max(40, count + 8)  # the discs' corners: no longer smooth, 1e-4 is reached here
         stop = min(stop, start + max(1, _BLOCK // count))
         block = order[start:stop]
-        result[block] = _chords(*(part[block] for part in parts), count=count, thin=thin)
+        result[block] = (_chords if thin else _lens_chords)(parts[:, block], count)
         start = stop
     return result / (math.pi * share)
 
 
-def _chords(
-    reach: Array,
-    other_x: Array,
-    other_y: Array,
-    wave_x: Array,
-    wave_y: Array,
-    *,
-    count: int,
-    thin: bool,
-) -> Array:
+def _chords(parts: Array, count: int) -> Array:
+    """Return the integrals over the overlap of two discs, `other` being the same two."""
+    reach, _, _, wave_x, wave_y = parts
     nodes, weights = gauss_legendre(count)
     start = np.arcsin(reach)
     span = 0.5 * math.pi - start
     angle = start[:, None] + span[:, None] * nodes
     x = np.sin(angle) - reach[:, None]
     cosine = np.cos(angle)
-    if thin:
-        length = 2.0 * cosine
-        phase = wave_x[:, None] * x
-    else:
-        low, high = -cosine, cosine
-        for sign in (1.0, -1.0):
-            inside = 1.0 - (x - sign * other_x[:, None]) ** 2
-            half = np.sqrt(np.maximum(inside, 0.0))
-            middle = sign * other_y[:, None]
-            low = np.maximum(low, middle - half)
-            high = np.minimum(high, np.where(inside > 0.0, middle + half, -np.inf))
-        length = np.maximum(high - low, 0.0)
-        middle = np.where(length > 0.0, 0.5 * (high + low), 0.0)
-        phase = wave_x[:, None] * x + wave_y[:, None] * middle
-    chord = length * np.sinc(wave_y[:, None] * length) * np.cos(2.0 * math.pi * phase)
+    length = 2.0 * cosine
+    chord = length * np.sinc(wave_y[:, None] * length)
+    chord *= np.cos((2.0 * math.pi * wave_x)[:, None] * x)
     # Twice: the other half is the point reflection of this one, with the complex conjugate.
     return np.asarray(2.0 * span * ((chord * cosine) @ weights))
+
+
+def _lens_chords(parts: Array, count: int) -> Array:
+    """Return the integrals over the overlap of four discs.
+
+    In single precision, three times as fast: its 1e-6 is far below the 1e-4 of the quadrature here.
+    """
+    reach, other_x, other_y, wave_x, wave_y = parts
+    single = np.float32
+    nodes, weights = (part.astype(single) for part in gauss_legendre(count))
+    start = np.arcsin(reach)
+    span = 0.5 * math.pi - start
+    angle = start.astype(single)[:, None] + span.astype(single)[:, None] * nodes
+    x = np.sin(angle) - reach.astype(single)[:, None]
+    cosine = np.cos(angle)
+    low, high = -cosine, cosine.copy()
+    for sign in (1.0, -1.0):
+        inside = 1.0 - np.square(x - (sign * other_x).astype(single)[:, None])
+        half = np.sqrt(np.maximum(inside, 0.0))
+        middle = (sign * other_y).astype(single)[:, None]
+        np.maximum(low, middle - half, out=low)
+        half[inside <= 0.0] = -np.inf  # beyond that disc: no chord
+        np.minimum(high, middle + half, out=high)
+    length = np.maximum(high - low, 0.0)
+    # The closed integral along a chord; the least turn keeps 0/0 away and changes nothing.
+    turn = np.abs((math.pi * wave_y).astype(single)[:, None] * length) + single(1e-6)
+    chord = length * np.sin(turn) / turn
+    middle = np.where(length > 0.0, 0.5 * (high + low), single(0.0))
+    phase = (2.0 * math.pi * wave_x).astype(single)[:, None] * x
+    phase += (2.0 * math.pi * wave_y).astype(single)[:, None] * middle
+    chord *= np.cos(phase)
+    chord *= cosine
+    return np.asarray(2.0 * span * (chord @ weights))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -53,7 +53,7 @@ class Light:
         Comp. 23 (1969) 221, from memory).
         """
         wavelengths, where = np.unique(self.wavelengths_nm, return_inverse=True)
-        shares = np.bincount(where, weights=self.shares)
+        shares = np.asarray(np.bincount(where, weights=self.shares), np.float64)
         wavelengths, shares = wavelengths[shares > 0.0], shares[shares > 0.0]
         if wavelengths.size <= count:
             return Light(wavelengths_nm=wavelengths, shares=shares)
@@ -257,7 +257,7 @@ def _best_of_1_mm(
         best = int(found.argmax())
         low, high = float(grid[max(best - 1, 0)]), float(grid[min(best + 1, count - 1)])
         finest = 1.4 * float(found[best])
-    return 0.5 * (low + high)
+    return float(0.5 * (low + high))
 
 
 def detail_anywhere(
@@ -297,17 +297,88 @@ def detail_anywhere(
         left = max(narrow - float(np.hypot(*bore_mm)), 0.2 * narrow)
         top = np.minimum(top, _CYCLES_ACROSS / (turn * left))
     frequency = (top[:, None] * np.linspace(0.0, 1.0, samples))[..., None] * along[:, None, :]
-    flat = frequency.reshape(-1, 2)
-    total = np.zeros(len(flat), np.complex128)
+    curves = light_ray_otf(
+        frequency.reshape(-1, 2),
+        rays=rays,
+        opening=opening,
+        plate_thickness_mm=plate_thickness_mm,
+        light=light,
+        distance_mm=distance_mm,
+    )
+    contrast = curves.real if opening.mirrored else np.abs(curves)
+    contrast = contrast.reshape(len(along), samples)
+    return np.stack([top * first_fall(contrast, level) for level in contrasts], axis=-1)
+
+
+def light_ray_otf(
+    frequency: Array,
+    *,
+    rays: ChiefRays,
+    opening: Opening,
+    plate_thickness_mm: float,
+    light: Light,
+    distance_mm: float = math.inf,
+) -> NDArray[np.complex128]:
+    """Return the transfer function of one chief ray averaged over a light.
+
+    frequency : (n, 2). Returns (n,); of a mirrored opening it is real, negative where light and dark
+    change places.
+    """
+    total = np.zeros(len(frequency), np.complex128)
     for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
         total += share * ray_otf(
-            flat,
+            frequency,
             rays=rays,
             opening=opening,
             plate_thickness_mm=plate_thickness_mm,
             distance_mm=distance_mm,
             wavelength_nm=float(wavelength),
         )
-    # A mirrored opening has a real curve, negative where light and dark change places.
-    curves = (total.real if opening.mirrored else np.abs(total)).reshape(len(along), samples)
-    return np.stack([top * first_fall(curves, level) for level in contrasts], axis=-1)
+    return total
+
+
+_MOST_FREQUENCIES = 80  # to either side of zero in a point image
+
+
+def point_image(
+    *,
+    rays: ChiefRays,
+    opening: Opening,
+    plate_thickness_mm: float,
+    light: Light,
+    distance_mm: float = math.inf,
+    width_mm: float,
+    count: int,
+) -> Array:
+    """Return the image of a point at one film point, 1/mm^2, of unit energy over the film.
+
+    width_mm : side of the square shown, its middle the chief ray. Returns (count, count), row 0 up
+    and column 0 left in the upright picture. The Fourier sum repeats after twice the width, so that
+    faint light from beyond adds to what is shown; where a hole so large needs more than
+    2 x 80 frequencies the image is softened to what they hold.
+    """
+    period = 2.0 * width_mm
+    finest = opening.width_mm / (
+        float(light.wavelengths_nm.min()) * 1e-6 * float(np.linalg.norm(rays.shift, -2))
+    )
+    half = min(math.ceil(finest * period), _MOST_FREQUENCIES)
+    right = np.arange(half + 1) / period
+    up = np.arange(-half, half + 1) / period
+    grid = np.stack(np.meshgrid(right, up), axis=-1)
+    otf = light_ray_otf(
+        grid.reshape(-1, 2),
+        rays=rays,
+        opening=opening,
+        plate_thickness_mm=plate_thickness_mm,
+        light=light,
+        distance_mm=distance_mm,
+    ).reshape(grid.shape[:2])
+    if finest * period > half:
+        soft = np.cos(0.5 * math.pi * np.arange(-half, half + 1) / (half + 1)) ** 2
+        otf = otf * soft[:, None] * soft[half:]
+    # The left half of the plane holds the complex conjugates.
+    otf[:, 1:] *= 2.0
+    place = ((np.arange(count) + 0.5) / count - 0.5) * width_mm
+    columns = np.exp(2j * math.pi * np.outer(right, place))
+    rows = np.exp(2j * math.pi * np.outer(-place, up))
+    return np.asarray((rows @ otf @ columns).real / period**2)
