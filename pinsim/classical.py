@@ -1,7 +1,8 @@
 """The hole sizes that books give, as d = k sqrt(lambda f), and what each of them is best at.
 
 They differ because they answer different questions. k is each author's own; the criterion beside it
-is the one whose optimum, computed from the same diffraction integral, lies nearest.
+is the one whose optimum, computed from the same diffraction integral, lies nearest; for Young, whose
+constant lies between two, his own.
 """
 
 import math

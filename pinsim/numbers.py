@@ -17,9 +17,9 @@ from pinsim.tools import CAUTION, Tool, how_to_make, tools_around
 CONTRAST = 0.2
 USUAL_DISTANCES_MM = (math.inf, 2000.0, 500.0)
 USUAL_EV = (15.0, 12.0, 9.0)
-# Wavelengths that stand for a light, for the camera's own hole. An outline is transformed anew for
-# each, so it takes few; a slit's curve ends in a corner for each, so it takes many.
-_WAVELENGTHS = {"round": 5, "oval": 5, "slit": 12, "traced": 3}
+# Wavelengths that stand for a light, for the camera's own hole: 2 leave an error of 2e-4 in its finest
+# detail, 4 none. An outline is transformed anew for each; a slit's curve has a kink for each.
+_WAVELENGTHS = {"round": 4, "oval": 4, "slit": 12, "traced": 2}
 _SAMPLES = 160
 
 Vector = tuple[float, float]
@@ -189,12 +189,7 @@ def _light_share(camera: Camera, across: float, up: float) -> float:
 
 
 def _stops_below(share: float) -> float:
-    return -math.log2(share) if share > 0.0 else math.inf
-
-
-def light_for_hole(camera: Camera, light: optics.Light) -> optics.Light:
-    """Return a light's few wavelengths that are enough for the camera's own hole."""
-    return light.condensed(_WAVELENGTHS[camera.hole.shape])
+    return abs(math.log2(share)) if share > 0.0 else math.inf
 
 
 def _details(
@@ -210,7 +205,7 @@ def _details(
         rays=camera.surface.chief_rays(*point_mm),
         opening=camera.opening,
         plate_thickness_mm=camera.plate_thickness_mm,
-        light=light_for_hole(camera, light),
+        light=light.condensed(_WAVELENGTHS[camera.hole.shape]),
         distance_mm=distance_mm,
         contrasts=(CONTRAST,),
         samples=_SAMPLES,

@@ -256,42 +256,90 @@ class Traced:
         return np.asarray(np.clip(flat, 0.0, 1.0).reshape(apart.shape[:-1]))
 
     def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Complex:
-        """Read the autocorrelation at the shifts wanted."""
-        overlap, cell = self._overlap(
-            np.asarray(curvature), (float(plate_shift_mm[0]), float(plate_shift_mm[1]))
-        )
-        shift = np.asarray(shift_mm, np.float64)
-        # Within two cells of no shift the cells' own size rounds the overlap's peak off; the true
-        # one is a cone there, from exactly 1 down to what is read two cells away.
-        apart = np.hypot(shift[:, 0], shift[:, 1]) / (_CONE_CELLS * cell)
-        outside = shift / np.where((apart > 0.0) & (apart < 1.0), apart, 1.0)[:, None]
-        read = _read(overlap, outside, cell)
-        near = np.minimum(apart, 1.0)
-        return np.asarray(1.0 - near + near * read)
+        """Read the autocorrelation at the shifts wanted, or transform the mere shadow.
 
-    def _overlap(self, curvature: Array, plate: tuple[float, float]) -> tuple[Complex, float]:
-        """Return the autocorrelation on a grid, zero shift in its middle, and the grid's cell."""
+        The autocorrelation turns steepest * width times per mm of shift, so that is how fine its grid
+        must be for a cubic to follow. Where that takes too many cells, the shift is far below a cell
+        and the overlap is the opening itself: its own Fourier transform, at C s.
+        """
+        shift = np.asarray(shift_mm, np.float64)
+        focus = np.asarray(0.5 * (curvature + np.asarray(curvature).T))
+        plate = (float(plate_shift_mm[0]), float(plate_shift_mm[1]))
+        clear = self._through(plate)
+        if not (clear > 1e-9).any() or not self._meets_itself(plate):
+            return np.zeros(len(shift), np.complex128)
+        steepest = float(np.abs(np.linalg.eigvalsh(focus)).max())
+        zoom = max(1, math.ceil(self.cell_mm * _FINER * steepest * self.width_mm))
+        if clear.shape[0] * zoom > _MOST_CELLS:
+            wave = shift @ focus.T
+            return self._shadow(clear, plate, wave) * np.cos(
+                math.pi * np.einsum("ij,ij->i", wave, shift)
+            )
+        overlap, cell = self._overlap(clear, plate, focus, zoom)
+        read = _read(overlap, shift, cell)
+        # Cells open in part round the peak off: by 1 - sum c^2 / sum c, over two cells.
+        blunt = 1.0 - float(overlap[overlap.shape[0] // 2, overlap.shape[1] // 2].real)
+        near = np.minimum(np.hypot(shift[:, 0], shift[:, 1]) / (2.0 * self.cell_mm), 1.0)
+        return np.asarray(read + blunt * (1.0 - near) ** 2)
+
+    def _meets_itself(self, plate: tuple[float, float]) -> bool:
+        rows = np.flatnonzero(self.clear.max(axis=1) > 0)
+        columns = np.flatnonzero(self.clear.max(axis=0) > 0)
+        return (
+            abs(plate[0]) < (columns[-1] - columns[0] + 1) * self.cell_mm
+            and abs(plate[1]) < (rows[-1] - rows[0] + 1) * self.cell_mm
+        )
+
+    def _through(self, plate: tuple[float, float]) -> Array:
+        from scipy import ndimage
+
+        if not any(plate):
+            return self.clear
+        # Each opening of the bore moves half the way. Rows run down, so up is minus.
+        half = np.array([-0.5 * plate[1], 0.5 * plate[0]]) / self.cell_mm
+        return np.asarray(
+            ndimage.shift(self.clear, half, order=1) * ndimage.shift(self.clear, -half, order=1)
+        )
+
+    def _shadow(self, clear: Array, plate: tuple[float, float], wave: Array) -> Complex:
+        """Return the opening's transform with exp(+2 pi i q x), q = wave (n, 2), cycles/mm."""
         from scipy import fft, ndimage
+
+        n = clear.shape[0]
+        size = fft.next_fast_len(6 * n)
+        key = ("shadow", *plate)
+        if key not in self._memory:
+            padded = np.zeros((size, size))
+            first = size // 2 - n // 2
+            padded[first : first + n, first : first + n] = clear
+            self._memory[key] = (
+                fft.fftshift(fft.fft2(fft.ifftshift(padded), workers=2)) / clear.sum(),
+                self.cell_mm,
+            )
+        spectrum = self._memory[key][0]
+        step = 1.0 / (size * self.cell_mm)
+        place = [size // 2 + wave[:, 1] / step, size // 2 - wave[:, 0] / step]
+        real = ndimage.map_coordinates(spectrum.real, place, order=5, mode="constant")
+        imaginary = ndimage.map_coordinates(spectrum.imag, place, order=5, mode="constant")
+        # The middle of an even grid lies half a cell before the transform's.
+        half = 0.5 * self.cell_mm * (1 - n % 2)
+        turn = np.exp(2j * math.pi * half * (wave[:, 0] - wave[:, 1]))
+        return np.asarray((real + 1j * imaginary) * turn)
+
+    def _overlap(
+        self, clear: Array, plate: tuple[float, float], curvature: Array, zoom: int
+    ) -> tuple[Complex, float]:
+        """Return the autocorrelation on a grid, zero shift in its middle, and the grid's cell."""
+        from scipy import fft
 
         key = (*(round(float(c), 9) for c in curvature.ravel()), *plate)
         if key in self._memory:
             return self._memory[key]
-        clear, cell = self.clear, self.cell_mm
-        if any(plate):
-            # Each opening of the bore moves half the way. Rows run down, so up is minus.
-            half = np.array([-0.5 * plate[1], 0.5 * plate[0]]) / cell
-            clear = ndimage.shift(clear, half, order=1) * ndimage.shift(clear, -half, order=1)
-        # The phase may turn by a quarter at most from cell to cell at the opening's edge.
-        steepest = float(np.abs(np.linalg.eigvalsh(0.5 * (curvature + curvature.T))).max())
-        finest = 0.25 / max(steepest * self.width_mm * 0.5, 1e-12)
-        zoom = max(1, math.ceil(cell / finest))
-        if clear.shape[0] * zoom > _MOST_CELLS:
-            zoom = max(1, _MOST_CELLS // clear.shape[0])
+        cell = self.cell_mm / zoom
         if zoom > 1:
-            clear = np.asarray(np.kron(clear, np.ones((zoom, zoom))), np.float64)
-            cell = cell / zoom
+            clear = np.kron(clear, np.ones((zoom, zoom)))
         n = clear.shape[0]
-        place = np.asarray((np.arange(n) - 0.5 * (n - 1)) * cell)
+        place: Array = (np.arange(n) - 0.5 * (n - 1)) * cell
         x, y = place[None, :], -place[:, None]
         turns = curvature[0, 0] * x * x + curvature[1, 1] * y * y
         phase = turns + (curvature[0, 1] + curvature[1, 0]) * x * y
@@ -299,13 +347,14 @@ class Traced:
         size = fft.next_fast_len(2 * n)
         power = np.abs(fft.fft2(wave, (size, size), workers=2)) ** 2
         overlap = np.asarray(fft.fftshift(fft.ifft2(power, workers=2)))
-        overlap /= max(float(clear.sum()), 1e-12)
+        overlap /= clear.sum()
         if len(self._memory) >= 8:
             self._memory.pop(next(iter(self._memory)))
         self._memory[key] = (overlap, cell)
         return overlap, cell
 
 
+_FINER = 4.0
 _MOST_CELLS = 2048
 _CONE_CELLS = 2.0
 

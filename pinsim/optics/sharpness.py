@@ -163,7 +163,6 @@ def spot_diameter_mm(
     Encircled energy E(r) = 2 pi r int OTF(nu) J1(2 pi nu r) d nu, by Gauss-Legendre.
     Source: the Hankel transform pair; checked against the tabulated radii in the tests.
     """
-    from scipy.optimize import brentq
     from scipy.special import j1
 
     light = light.condensed()
@@ -186,11 +185,15 @@ def spot_diameter_mm(
         return float(2.0 * math.pi * radius * np.sum(otf * bessel)) - share
 
     # The first radius that holds the share: rings make E(r) rise everywhere, but not its quadrature.
-    radii = np.linspace(0.0, outer, 65)[1:]
-    for low, high in zip(np.concatenate([[1e-9 * outer], radii[:-1]]), radii, strict=True):
-        if missing(float(high)) >= 0.0:
-            return 2.0 * float(brentq(missing, float(low), float(high), xtol=1e-7 * outer))
-    return 2.0 * outer
+    radii = np.linspace(0.0, outer, 65)
+    held = next((one for one in radii.tolist()[1:] if missing(one) >= 0.0), None)
+    if held is None:
+        return 2.0 * outer
+    low, high = held - float(radii[1]), held
+    for _ in range(20):  # halving needs no more, and no package that is slow to load
+        middle = 0.5 * (low + high)
+        low, high = (low, middle) if missing(middle) >= 0.0 else (middle, high)
+    return float(low + high)
 
 
 def best_diameter_mm(

@@ -82,7 +82,7 @@ def hole_overlay(photo: Photo, hole: HoleScan, *, title: str, lines: tuple[str, 
         GAP,
         y,
         "The outline unrolled: how far it lies outside (up) or inside (down) of the best ellipse, "
-        "from right through up, left and down",
+        "from right through up, left and down as seen from behind",
         size=16,
         faint=True,
     )

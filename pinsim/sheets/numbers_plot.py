@@ -12,10 +12,10 @@ from PIL import Image, ImageDraw, ImageFont
 
 from pinsim.best import light_for
 from pinsim.camera import Camera
+from pinsim.errors import DesignError
 from pinsim.numbers import (
     CONTRAST,
     format_detail,
-    light_for_hole,
     outwards,
     usual_places,
 )
@@ -33,6 +33,8 @@ PLOT_PX = (900, 740)
 _TILE_PX = {(3, 3): (238, 14), (5, 3): (162, 12), (3, 5): (132, 14)}
 _FINE = 3  # lines are drawn this much larger and reduced, which smooths them
 _WIDE = 1.45  # a frame longer than this gets five point images along, not three
+# As in pinsim.numbers, with more for rings and for the ends of curves.
+_WAVELENGTHS = {"round": 6, "oval": 6, "slit": 12, "traced": 3}
 _FIELD = (244, 244, 242)
 _GRID = (214, 214, 211)
 # Black, blue and orange of different darkness: told apart by eyes that take red for green, and,
@@ -60,30 +62,38 @@ class _View:
         self._common: dict[str, Any] = {
             "opening": camera.opening,
             "plate_thickness_mm": camera.plate_thickness_mm,
-            "light": light_for_hole(camera, light),
+            "light": light.condensed(_WAVELENGTHS[camera.hole.shape]),
             "distance_mm": distance_mm,
         }
         self.distance_mm = distance_mm
+        self._light_shares: dict[tuple[float, float], float] = {}
 
     def rays(self, place: tuple[float, float]) -> ChiefRays:
         return self.camera.surface.chief_rays(*self.camera.frame_point_mm(*place))
 
-    def light_share(self, rays: ChiefRays) -> float:
+    def light_share(self, place: tuple[float, float]) -> float:
         """Return the light that comes there over that on the axis."""
-        bore = self.camera.plate_thickness_mm * rays.tangent
-        if float(rays.falloff) <= 0.0:
-            return 0.0
-        return float(rays.falloff) * float(self.camera.opening.clear_share(bore))
+        if place not in self._light_shares:  # of an outline each costs a transform
+            rays = self.rays(place)
+            share = float(rays.falloff)
+            if share > 0.0:
+                bore = self.camera.plate_thickness_mm * rays.tangent
+                share *= float(self.camera.opening.clear_share(bore))
+            self._light_shares[place] = share
+        return self._light_shares[place]
 
-    def finest(self, rays: ChiefRays, direction: Array, contrast: float) -> float:
-        found = detail_anywhere(
-            direction[None], rays=rays, contrasts=(contrast,), samples=160, **self._common
+    def finest(self, rays: ChiefRays, directions: Array, contrasts: Sequence[float]) -> Array:
+        """Return finest details (directions, contrasts)."""
+        return detail_anywhere(
+            directions, rays=rays, contrasts=contrasts, samples=160, **self._common
         )
-        return float(found[0, 0])
 
-    def contrast(self, rays: ChiefRays, direction: Array, frequency: Array) -> Array:
-        curve = light_ray_otf(frequency[:, None] * direction, rays=rays, **self._common)
-        return np.asarray(curve.real if self.camera.opening.mirrored else np.abs(curve))
+    def contrast(self, rays: ChiefRays, directions: Array, frequency: Array) -> Array:
+        """Return contrast curves (directions, frequencies)."""
+        along = frequency[:, None] * directions[:, None, :]
+        flat = light_ray_otf(along.reshape(-1, 2), rays=rays, **self._common)
+        curves = flat.reshape(len(directions), len(frequency))
+        return np.asarray(curves.real if self.camera.opening.mirrored else np.abs(curves))
 
     def point(self, rays: ChiefRays, width_mm: float, count: int) -> Array:
         return point_image(rays=rays, width_mm=width_mm, count=count, **self._common)
@@ -95,6 +105,7 @@ def numbers_plot(
     """Return a sheet: contrast against detail at centre, edge and corner, and point images.
 
     distance_mm : hole to object. wavelength_nm : one colour; else the material's own light.
+    Raises DesignError when no light reaches any of these places.
     """
     view = _View(camera, light_for(wavelength_nm, camera.material_name), distance_mm)
     plot, plot_note = _plot(view)
@@ -149,38 +160,35 @@ def _curves(view: _View) -> tuple[list[_Curve], list[str], float]:
         and (name in {"left edge", "right edge"}) == (film.width_mm >= film.height_mm)
     )
     round_hole = view.camera.hole.shape == "round"
-    wanted = []
-    unlit = []
+    words = ("outwards", "around") if round_hole else ("to the right", "upwards")
+    lit, unlit = [], []
     for name, colour in zip(("centre", edge, "corner"), _COLOURS, strict=True):
-        rays = view.rays(names[name])
-        if view.light_share(rays) <= 0.0:
+        if view.light_share(names[name]) <= 0.0:
             unlit.append(name)
             continue
         point = view.camera.frame_point_mm(*names[name])
-        first = np.array(outwards(point) if round_hole else (1.0, 0.0))
-        second = np.array([-first[1], first[0]])
-        words = ("outwards", "around") if round_hole else ("to the right", "upwards")
-        if round_hole and math.hypot(*point) < 1e-9:
-            wanted.append((name, colour, False, rays, first))
-            continue
-        wanted.append((f"{name}, {words[0]}", colour, False, rays, first))
-        wanted.append((f"{name}, {words[1]}", colour, True, rays, second))
-    top = 1.45 * max(view.finest(rays, way, 0.1) for *_, rays, way in wanted)
+        x, y = outwards(point) if round_hole else (1.0, 0.0)
+        ways = np.array([[x, y], [-y, x]])
+        labels = [f"{name}, {word}" for word in words]
+        if round_hole and math.hypot(*point) < 1e-9:  # alike both ways
+            ways, labels = ways[:1], [name]
+        rays = view.rays(names[name])
+        lit.append((labels, colour, rays, ways, view.finest(rays, ways, (CONTRAST, 0.1))))
+    if not lit:
+        raise DesignError(
+            "no light reaches the film's centre, edge or corner, so there is nothing to plot; "
+            "use a thinner plate, a larger hole or less shift."
+        )
+    top = 1.45 * max(float(finest[:, 1].max()) for *_, finest in lit)
     frequency = np.linspace(0.0, top, 240)
-    return (
-        [
-            _Curve(
-                label=label,
-                colour=colour,
-                dashed=dashed,
-                contrast=view.contrast(rays, way, frequency),
-                finest=view.finest(rays, way, CONTRAST),
-            )
-            for label, colour, dashed, rays, way in wanted
-        ],
-        unlit,
-        top,
-    )
+    curves = []
+    for labels, colour, rays, ways, finest in lit:
+        drawn = view.contrast(rays, ways, frequency)
+        curves += [
+            _Curve(label, colour, i == 1, drawn[i], float(finest[i, 0]))
+            for i, label in enumerate(labels)
+        ]
+    return curves, unlit, top
 
 
 class _Field:
@@ -381,7 +389,7 @@ def _tiles(view: _View) -> tuple[list[list[Codes]], list[list[str]], str]:
         captions.append([])
         for place in row:
             rays = view.rays(place)
-            share = view.light_share(rays)
+            share = view.light_share(place)
             images[-1].append(share * _point(view, place, width_mm, tile_px, drawn))
             angle = math.degrees(math.acos(min(1.0, float(rays.direction[2]))))
             captions[-1].append(
@@ -411,9 +419,8 @@ def _shown_width_mm(view: _View, places: list[tuple[float, float]]) -> float:
     shadow = camera.hole.greatest_mm * (1.0 + z / view.distance_mm)
     spreads = []
     for place in places:
-        rays = view.rays(place)
-        if view.light_share(rays) > 0.0:
-            reach = float(np.linalg.norm(rays.shift, 2))
+        if view.light_share(place) > 0.0:
+            reach = float(np.linalg.norm(view.rays(place).shift, 2))
             spreads.append(view.mean_nm * 1e-6 * reach / camera.hole.diameter_mm)
     least = view.mean_nm * 1e-6 * z / camera.hole.diameter_mm
     spread = min(max(spreads, default=least), 4.0 * least)
@@ -428,11 +435,10 @@ def _point(
     drawn: dict[tuple[float, float], Array],
 ) -> Array:
     """Return the point image at a place; a round hole's is the mirror image of that opposite."""
-    rays = view.rays(place)
-    if view.light_share(rays) <= 0.0:
+    if view.light_share(place) <= 0.0:
         return np.zeros((count, count))
     if view.camera.hole.shape != "round":
-        return view.point(rays, width_mm, count)
+        return view.point(view.rays(place), width_mm, count)
     u, v = view.camera.frame_point_mm(*place)
     key = (round(abs(u), 9), round(abs(v), 9))
     if key not in drawn:

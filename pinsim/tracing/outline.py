@@ -51,7 +51,7 @@ def smoothed(outline: Array, shortest: float) -> Array:
     lowest harmonics, which hold its size and shape, stay as they are.
     """
     length = perimeter(outline)
-    count = max(64, math.ceil(4.0 * length / shortest))
+    count = max(128, math.ceil(8.0 * length / shortest))
     even = resampled(outline, max(count, len(outline)))
     turns = np.fft.fftfreq(len(even), 1.0 / len(even))
     weight = 1.0 / (1.0 + (np.abs(turns) * shortest / length) ** 8)
