@@ -11,7 +11,7 @@ ROOT = Path(__file__).resolve().parents[1] / "pinsim"
 # Lowest first; a room or file may use what stands above it in this table, never below or beside.
 FLOORS = (
     {"errors", "progress", "colour", "optics"},
-    {"units", "tables", "samples", "files", "material"},
+    {"units", "tables", "samples", "files", "material", "classical", "tools"},
     {"scene"},
     {"tracing"},
     {"camera"},

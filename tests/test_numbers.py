@@ -320,6 +320,20 @@ def test_a_slits_detail_is_told_right_and_up(side_mm, key):
     assert row.detail_cycles_mm == min(row.right_cycles_mm, row.up_cycles_mm)
 
 
+def test_a_traced_round_hole_has_the_round_holes_figures():
+    """The same opening by another road: cells of 1/128 of it, each by the share that is clear."""
+    cells = (np.arange(1280) - 639.5) * (0.3 / 1280)
+    disc = (np.hypot(cells[None, :], cells[:, None]) <= 0.15).astype(float)
+    clear = disc.reshape(128, 10, 128, 10).mean(axis=(1, 3))
+    traced = replace(BOX, hole=Hole.traced(optics.Traced(clear=clear, cell_mm=0.3 / 128)))
+    found, expected = (figures(camera, wavelength_nm=GREEN_NM) for camera in (traced, BOX))
+    for one, other in zip(found.places, expected.places, strict=True):
+        assert one.falloff_stops == pytest.approx(other.falloff_stops, abs=0.01)
+        for key in ("right_cycles_mm", "up_cycles_mm"):
+            assert getattr(one, key) == pytest.approx(getattr(other, key), rel=HALF_PERCENT)
+    assert not found.round_hole
+
+
 def test_contrast_too_low_to_be_looked_for_anywhere_is_refused():
     rays = BOX.surface.chief_rays(0.0, 0.0)
     with pytest.raises(ValueError, match=r"contrasts below 0\.1"):

@@ -12,16 +12,16 @@ from reference import rayleigh_sommerfeld as rs
 
 import pinsim
 
-DEPTH_MM = 8.0
+DEPTH_MM = 12.0
 HOLE_MM = 0.12
 WAVELENGTH_NM = 550.0
 PIXELS = 96
 FRAME_MM = 2.0 * DEPTH_MM  # 90 degrees across, on flat film
-PHOTO_PITCH_MM = 0.016  # on the plane of flat film: finer than 1/(2 x 27 cycles/mm), the cut-off
+PHOTO_PITCH_MM = 0.024  # on the plane of flat film: finer than 1/(2 x 18 cycles/mm), the cut-off
 PHOTO_SIDE = 1100  # 95 degrees: a dark rim all round
 BLOB_SIGMA_PX = 1.5  # a smooth lamp holds nothing that photo pixels could not
 BLOB_PX = 4  # half its width; beyond, exp(-3.5) and less is cut off alike on both sides
-REACH_MM = 0.5  # farther away a lamp has less than 1e-4 of its peak
+REACH_MM = 0.6  # farther away a lamp has less than 1e-4 of its peak
 
 RMS_BOUND = 1e-3
 LARGEST_BOUND = 5e-3
@@ -91,7 +91,7 @@ def summed(photo, bend_radius_mm, width_mm, height_mm, shape, pitch_mm, distance
 
 CASES = [
     ("flat", np.inf, 0.0),
-    ("flat", 40.0, 0.0),
+    ("flat", 60.0, 0.0),
     ("flat", np.inf, 0.03),
     ("arc about the hole", np.inf, 0.0),
     ("round tin", np.inf, 0.0),
@@ -107,9 +107,9 @@ def test_every_lamp_is_drawn_as_its_own_place_on_the_film_draws_it(surface, dist
     bend = SURFACES[surface]
     # A round tin bends through twice the angle: 90 degrees across is a film as long as its half turn.
     width = FRAME_MM if np.isinf(bend) else np.radians(90.0) * DEPTH_MM
-    height = FRAME_MM if np.isinf(bend) else 8.0
-    half_height = 7.0 if np.isinf(bend) else 2.4
-    photo = lamps(12, rng, 7.6, half_height)
+    height = FRAME_MM if np.isinf(bend) else 12.0
+    half_height = 10.5 if np.isinf(bend) else 3.6
+    photo = lamps(12, rng, 11.4, half_height)
     scene = pinsim.Scene.from_light(
         photo.astype(np.float32),
         horizontal_view_deg=float(

@@ -2,6 +2,7 @@
 
 round_hole.py    transfer function and point image of a round hole on the axis, one quadrature
 opening.py       openings of any shape, and the overlap of each with itself
+traced.py        an opening of any outline, on a grid
 film_surface.py  flat and bent film: where its points lie, what the hole looks like from there
 film_transfer.py the transfer function anywhere on any film
 falloff.py       how much light reaches a flat film: distance, tilt, thickness of plate
@@ -16,7 +17,7 @@ if TYPE_CHECKING:
     from pinsim.optics.falloff import flat_falloff, plate_transmission
     from pinsim.optics.film_surface import ChiefRays, FilmSurface
     from pinsim.optics.film_transfer import OpticalCamera, film_otf, ray_otf
-    from pinsim.optics.opening import Ellipse, Opening, Slit, Traced
+    from pinsim.optics.opening import Ellipse, Opening, Slit
     from pinsim.optics.round_hole import overlap_otf, round_otf, round_psf
     from pinsim.optics.sharpness import (
         Light,
@@ -25,6 +26,7 @@ if TYPE_CHECKING:
         light_otf,
         spot_diameter_mm,
     )
+    from pinsim.optics.traced import Traced
 
 __all__ = [
     "ChiefRays",
@@ -56,7 +58,7 @@ _ROOM_OF = {
     "Opening": "opening",
     "OpticalCamera": "film_transfer",
     "Slit": "opening",
-    "Traced": "opening",
+    "Traced": "traced",
     "best_diameter_mm": "sharpness",
     "film_otf": "film_transfer",
     "finest_detail": "sharpness",

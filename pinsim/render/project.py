@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.render.plan import RenderPlan
-from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks
+from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks, resample_line
 from pinsim.scene import DistanceMap, Scene
 
 Float = NDArray[np.float32]
@@ -18,6 +18,8 @@ Array = NDArray[np.float64]
 _BEYOND = {"mirror": "reflect", "extend": "nearest", "black": "grid-constant"}
 
 _THREADS = 2
+# Film that looks sideways or back, this close to the hole's plane: a flat photo has nothing there.
+_LEAST_AHEAD = 1e-3
 _STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
 
 
@@ -47,9 +49,11 @@ class FilmView:
 
 def project(scene: Scene, plan: RenderPlan) -> FilmView:
     """Lay the scene on the film grid, upright as the scene is seen."""
-    if scene.projection == "rectilinear" and plan.camera.surface.flat:
+    if scene.projection == "equirectangular":
+        return _project_panorama(scene, plan)
+    if plan.camera.surface.flat:
         return _project_planes(scene, plan)
-    return _project_points(scene, plan)
+    return _project_bent(scene, plan)
 
 
 def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
@@ -105,6 +109,85 @@ def _lay_rows(
         planes[:, block.to, part.to] = (flat[:, take] @ part.weights.T).reshape(3, height, -1)
 
 
+def _project_bent(scene: Scene, plan: RenderPlan) -> FilmView:
+    """Lay a flat photo on film bent about one axis, exactly: first along the bend, then across it.
+
+    Along the bend the photo's place depends on that coordinate only; across it each line of the
+    film is the photo's line at a scale of its own. Both are band-limited at their own local scale.
+    """
+    camera = plan.camera
+    upright = camera.film.bend_axis == "vertical"  # bent along u
+    rows, columns = scene.photo.shape
+    bent_mm, straight_mm = (
+        (plan.right_mm(), plan.up_mm()) if upright else (plan.up_mm(), plan.right_mm())
+    )
+    along_size, across_size = (columns, rows) if upright else (rows, columns)
+    # Rows of a photo run down while up is up.
+    along_sign, across_sign = (1.0, -1.0) if upright else (-1.0, 1.0)
+    zero = np.zeros(1)
+    points = (
+        camera.surface.points_mm(bent_mm, zero)
+        if upright
+        else camera.surface.points_mm(zero, bent_mm)
+    )
+    aside, depth = points[..., 0 if upright else 1], points[..., 2]
+    ahead = depth > _LEAST_AHEAD * camera.focal_length_mm
+    depth = np.maximum(depth, _LEAST_AHEAD * camera.focal_length_mm)
+    far = 2.0 * along_size
+    along = np.clip(scene.focal_length_px * aside / depth, -far, far)
+    scale = scene.focal_length_px / depth  # photo pixels per mm across the bend
+    steps_along = np.maximum(np.abs(np.gradient(along)), 1e-6)
+    steps_across = scale * plan.pitch_mm
+    place = 0.5 * (along_size - 1) + along_sign * along
+    across = 0.5 * (across_size - 1) + across_sign * np.outer(scale, straight_mm)
+    seen = ahead & (place >= -0.5) & (place <= along_size - 0.5)
+    compensate = (
+        bool(min(steps_along[seen].min(), steps_across[seen].min()) >= ALIAS_FREE)
+        if (seen.any())
+        else False
+    )
+    cutoff = ALIAS_FREE if compensate else 1.0
+    lines = np.empty((bent_mm.size, across_size, 3), np.float32)
+    for block in make_blocks(
+        place, along_size, step=steps_along, beyond=scene.beyond, cutoff=cutoff
+    ):
+        if upright:
+            light = scene.photo.linear(columns=block.take).swapaxes(0, 1)
+        else:
+            light = scene.photo.linear(rows=block.take)
+        flat = block.weights @ np.ascontiguousarray(light).reshape(light.shape[0], -1)
+        lines[block.to] = flat.reshape(-1, across_size, 3)
+    planes = np.empty((3, *plan.padded), np.float32)
+
+    def lay(k: int) -> None:
+        line = resample_line(
+            lines[k], across[k], step=float(steps_across[k]), beyond=scene.beyond, cutoff=cutoff
+        )
+        if upright:
+            planes[:, :, k] = line.T
+        else:
+            planes[:, k, :] = line.T
+
+    with ThreadPoolExecutor(_THREADS) as pool:
+        for _ in pool.map(lay, range(bent_mm.size)):
+            pass
+    within = (across >= -0.5) & (across <= across_size - 0.5) & seen[:, None]
+    bent_index = np.rint(place)[:, None]
+    straight_index = np.rint(across)
+    if upright:
+        within = within.T
+        distances = _distances(scene, straight_index.T, bent_index.T)
+    else:
+        distances = _distances(scene, bent_index, straight_index)
+    return FilmView(
+        plan=plan,
+        light=np.moveaxis(planes, 0, -1),
+        inverse_distance=distances,
+        covered=np.ascontiguousarray(within[plan.inside]),
+        compensate=compensate,
+    )
+
+
 def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float64]) -> Float | None:
     """Return 1/distance at the nearest photo pixel; edges between near and far stay edges."""
     if not isinstance(scene.distance, DistanceMap):
@@ -117,23 +200,22 @@ def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float6
     )
 
 
-def _project_points(scene: Scene, plan: RenderPlan) -> FilmView:
-    """Lay a scene on the film point by point, each looking up its own direction in the photo.
+def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
+    """Lay an equirectangular picture on any film, each point looking up its own direction.
 
-    For panoramas and for bent film, where rows and columns do not part. Read on a grid twice as
-    fine, from a photo averaged down to that grid where it is finer still everywhere, and brought
-    to the film's grid like any photo.
+    Read on a grid twice as fine, from a photo averaged down to that grid where it is finer still
+    everywhere, and brought to the film's grid like any photo.
     """
     from scipy.ndimage import map_coordinates
 
     rows, columns = scene.photo.shape
-    around = scene.projection == "equirectangular" and scene.horizontal_view_deg >= 359.99
+    around = scene.horizontal_view_deg >= 359.99
     fine = plan.pitch_mm / 2.0
     right = np.repeat(plan.right_mm(), 2) + np.tile([-0.5, 0.5], plan.padded[1]) * fine
     up = np.repeat(plan.up_mm(), 2) + np.tile([0.5, -0.5], plan.padded[0]) * fine
-    row, column, ahead = _places(scene, plan, right, up)
-    steps = np.hypot(np.diff(row, axis=1), np.diff(column, axis=1))[ahead[:, 1:]]
-    shrink = max(1, math.floor(float(np.percentile(steps, 2.0)))) if steps.size else 1
+    row, column = _panorama_place(scene, plan, right, up)
+    steps = np.hypot(np.diff(row, axis=1), np.diff(column, axis=1))
+    shrink = max(1, math.floor(float(np.percentile(steps, 2.0))))
     small = _averaged(scene, shrink)
     place = [(row + 0.5) / shrink - 0.5, (column + 0.5) / shrink - 0.5]
     mode = "grid-wrap" if around else _BEYOND[scene.beyond]
@@ -157,12 +239,10 @@ def _project_points(scene: Scene, plan: RenderPlan) -> FilmView:
                 tall[block.to] = block.weights @ dense[block.take]
             for block in across:
                 planes[channel, :, block.to] = tall[:, block.take] @ block.weights.T
-    row, column, ahead = _places(scene, plan, plan.right_mm(), plan.up_mm())
+    row, column = _panorama_place(scene, plan, plan.right_mm(), plan.up_mm())
     inside = plan.inside
-    seen = (
-        ahead[inside]
-        & (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows)
-        & (around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns))
+    seen = (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows) & (
+        around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns)
     )
     return FilmView(
         plan=plan,
@@ -173,25 +253,16 @@ def _project_points(scene: Scene, plan: RenderPlan) -> FilmView:
     )
 
 
-def _places(
+def _panorama_place(
     scene: Scene, plan: RenderPlan, right_mm: Array, up_mm: Array
-) -> tuple[Array, Array, NDArray[np.bool_]]:
-    """Return the photo's rows and columns that film points look at, and whether they look ahead."""
+) -> tuple[Array, Array]:
+    """Return the panorama's rows and columns that film points look at."""
     points = plan.camera.surface.points_mm(right_mm[None, :], up_mm[:, None])
     x, y, z = points[..., 0], points[..., 1], points[..., 2]
     rows, columns = scene.photo.shape
-    per = scene.focal_length_px
-    if scene.projection == "equirectangular":
-        column = 0.5 * (columns - 1) + per * np.arctan2(x, z)
-        row = 0.5 * (rows - 1) - per * np.arctan2(y, np.hypot(x, z))
-        return row, column, np.ones(z.shape, np.bool_)
-    # Where the film looks sideways or back, a flat photo has nothing: read its edge, call it hidden.
-    ahead = z > 1e-3 * plan.camera.focal_length_mm
-    depth = np.where(ahead, z, 1e-3 * plan.camera.focal_length_mm)
-    far = 4.0 * max(rows, columns)
-    column = 0.5 * (columns - 1) + np.clip(per * x / depth, -far, far)
-    row = 0.5 * (rows - 1) - np.clip(per * y / depth, -far, far)
-    return row, column, ahead
+    per_rad = scene.focal_length_px
+    column = 0.5 * (columns - 1) + per_rad * np.arctan2(x, z)
+    return 0.5 * (rows - 1) - per_rad * np.arctan2(y, np.hypot(x, z)), column
 
 
 def _averaged(scene: Scene, shrink: int) -> Float:

@@ -60,24 +60,28 @@ def fold(index: NDArray[np.intp], size: int, beyond: str) -> NDArray[np.intp]:
 
 
 def make_blocks(
-    position: NDArray[np.floating[Any]], size: int, *, step: float, beyond: str, cutoff: float = 1.0
+    position: NDArray[np.floating[Any]],
+    size: int,
+    *,
+    step: float | NDArray[np.floating[Any]],
+    beyond: str,
+    cutoff: float = 1.0,
 ) -> list[Block]:
     """Return the blocks that resample an axis of `size` photo pixels.
 
     position : (n,) where each film pixel's middle lies, in photo pixels, 0 = middle of the first.
-    step : photo pixels per film pixel; below 1 the photo is the coarser grid.
+    step : photo pixels per film pixel, one or (n,) of them; below 1 the photo is the coarser grid.
     beyond : "mirror", "extend" or "black", for positions outside the photo.
     cutoff : of the kernel, relative to the coarser grid's Nyquist frequency.
     """
-    period = max(1.0, step) / cutoff
-    reach = HALF_PERIODS * period
-    taps = int(np.ceil(2.0 * reach)) + 1
+    periods = np.broadcast_to(np.maximum(1.0, np.asarray(step) / cutoff), position.shape)
     blocks = []
     for start in range(0, position.size, _GROUP):
         middle = position[start : start + _GROUP]
-        first = np.ceil(middle - reach).astype(np.intp)
-        index = first[:, None] + np.arange(taps)
-        weight = _kernel((index - middle[:, None]) / period)
+        period = periods[start : start + _GROUP]
+        first = np.ceil(middle - HALF_PERIODS * period).astype(np.intp)
+        index = first[:, None] + np.arange(int(np.ceil(2.0 * HALF_PERIODS * period.max())) + 1)
+        weight = _kernel((index - middle[:, None]) / period[:, None])
         # Normalised row by row, so that a plain wall stays plain to the last bit.
         weight /= weight.sum(axis=1, keepdims=True)
         if beyond == "black":
@@ -91,6 +95,40 @@ def make_blocks(
             Block(slice(start, start + middle.size), slice(low, high), dense.astype(np.float32))
         )
     return blocks
+
+
+_TABLE_STEPS = (
+    512  # of the kernel per period: reading the nearest errs by less than 1e-3 of a weight
+)
+_TABLE = _kernel(np.arange(int(HALF_PERIODS) * _TABLE_STEPS + 2) / _TABLE_STEPS).astype(np.float32)
+
+
+def resample_line(
+    line: Float, position: NDArray[np.floating[Any]], *, step: float, beyond: str, cutoff: float
+) -> Float:
+    """Resample one line of a picture whose scale is its own.
+
+    line : (size, channels). position : (n,); step, beyond and cutoff as for make_blocks.
+    Returns (n, channels). For lines that share nothing with their neighbours; the kernel is read
+    from a table, as its weights are made for each line anew.
+    """
+    from scipy.sparse import csr_array
+
+    size = line.shape[0]
+    period = max(1.0, step / cutoff)
+    reach = HALF_PERIODS * period
+    taps = int(np.ceil(2.0 * reach)) + 1
+    index = np.ceil(position - reach).astype(np.intp)[:, None] + np.arange(taps)
+    apart = np.abs(index - position[:, None]) * (_TABLE_STEPS / period) + 0.5
+    weight = _TABLE[np.minimum(apart, _TABLE.size - 1).astype(np.intp)]
+    weight /= weight.sum(axis=1, keepdims=True)
+    if beyond == "black":
+        weight *= (index >= 0) & (index < size)
+    rows = np.arange(0, weight.size + 1, taps)
+    matrix = csr_array(
+        (weight.ravel(), fold(index, size, beyond).ravel(), rows), (position.size, size)
+    )
+    return np.asarray(matrix @ line, np.float32)
 
 
 @dataclass(frozen=True, slots=True)

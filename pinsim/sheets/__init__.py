@@ -3,6 +3,7 @@
 side_by_side.py  two designs, the same part of the scene, with details enlarged
 contact.py       scenes down, designs across
 hole_overlay.py  a traced hole drawn over its scan
+numbers_plot.py  contrast against detail, and point images across the frame
 lettering.py     the sheet itself: paper, captions, frames, saving
 """
 
