@@ -31,6 +31,7 @@ def command(
     design with itself under the other hole. A centre and a corner detail stand below each.
     """
     from pinsim.cli.designs import (
+        assumed,
         default_output,
         input_files,
         load_scene,
@@ -78,6 +79,6 @@ def command(
             f"{target}: {sheet.codes.shape[1]} x {sheet.codes.shape[0]} px",
             f"left:  {designs[0].name}, {designs[0].summary}",
             f"right: {designs[1].name}, {designs[1].summary}",
-            *(f"note: {note}" for note in notes),
+            *(f"note: {note}" for note in (*assumed(cameras, given), *notes)),
         ]
     )

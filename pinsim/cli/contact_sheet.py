@@ -31,7 +31,13 @@ def command(
     Every SCENE through every design: each --camera with each --hole and each --focal-length given.
     Several scenes stand below each other, their designs side by side.
     """
-    from pinsim.cli.designs import default_output, input_files, load_scene, make_cameras
+    from pinsim.cli.designs import (
+        assumed,
+        default_output,
+        input_files,
+        load_scene,
+        make_cameras,
+    )
     from pinsim.cli.show import progress_bar, tell
     from pinsim.files import PICTURE_SUFFIXES, check_target, keep_inputs
     from pinsim.sheets.contact import contact_sheet
@@ -60,7 +66,11 @@ def command(
     tell(
         [
             f"{target}: {sheet.codes.shape[1]} x {sheet.codes.shape[0]} px, "
-            f"{len(places)} scenes x {len(designs)} designs",
-            *(f"note: {note}" for note in notes),
+            f"{_count(len(places), 'scene')} x {_count(len(designs), 'design')}",
+            *(f"note: {note}" for note in (*assumed(cameras, given), *notes)),
         ]
     )
+
+
+def _count(number: int, thing: str) -> str:
+    return f"{number} {thing}" if number == 1 else f"{number} {thing}s"

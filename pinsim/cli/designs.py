@@ -130,6 +130,13 @@ def _film(text: str | None, portrait: bool | None, present: Film) -> Film:
     return replace(present, width_mm=film.width_mm, height_mm=film.height_mm, frame=film.frame)
 
 
+def assumed(paths: Sequence[str | None], options: Mapping[str, Any]) -> list[str]:
+    """Return what was taken for granted of a typed design, to be said with the result."""
+    if any(paths) or options.get("film"):
+        return []
+    return [f"film taken as {DEFAULT_FILM} (--film to change)"]
+
+
 def default_output(stem: str, suffix: str = ".png") -> Path:
     """Return a file name in the working folder made of plain words."""
     plain = re.sub(r"[^a-z0-9.]+", "-", stem.lower()).strip("-.")[-120:]

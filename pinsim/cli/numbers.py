@@ -102,6 +102,11 @@ def _plain(value: "Figures") -> Any:
     return plain
 
 
+def _frame(figures: Any) -> str:
+    size = f"{figures.frame_width_mm:g} x {figures.frame_height_mm:g} mm"
+    return str(figures.frame) if figures.frame.startswith(size) else f"{figures.frame}: {size}"
+
+
 def _tables(figures: "Figures") -> None:
     from rich.console import Console
 
@@ -137,7 +142,7 @@ def _head(console: "Console", figures: "Figures") -> None:
         ("hole", f"{hole}{plate}"),
         ("hole to film", f"{figures.focal_length_mm:g} mm"),
         ("f-number", f"f/{figures.f_number:.0f}"),
-        ("frame", f"{figures.frame}: {figures.frame_width_mm:g} x {figures.frame_height_mm:g} mm"),
+        ("frame", _frame(figures)),
         (
             "angle of view",
             f"{figures.horizontal_view_deg:.0f} deg across, {figures.vertical_view_deg:.0f} deg high, "
@@ -150,7 +155,7 @@ def _head(console: "Console", figures: "Figures") -> None:
         ),
         (
             "cut-off",
-            f"nothing finer than {figures.cutoff_cycles_mm:.3g} cycles/mm reaches the film",
+            f"contrast ends at {figures.cutoff_cycles_mm:.3g} cycles/mm for the average wavelength",
         ),
     ):
         head.add_row(name, value)

@@ -32,7 +32,14 @@ def command(
     sample:NAME; or type the camera: --hole 0.30mm --focal-length 60mm --film 6x6. The picture prints
     at the film's true size.
     """
-    from pinsim.cli.designs import camera_stem, default_output, input_files, load_scene, make_camera
+    from pinsim.cli.designs import (
+        assumed,
+        camera_stem,
+        default_output,
+        input_files,
+        load_scene,
+        make_camera,
+    )
     from pinsim.cli.show import progress_bar, tell
     from pinsim.files import EXPOSURE_SUFFIXES, check_bits, check_target, keep_inputs
     from pinsim.samples import PREFIX
@@ -75,6 +82,6 @@ def command(
             f"{target}: {columns} x {rows} px, prints {design.film.width_mm:g} x "
             f"{design.film.height_mm:g} mm; {design.tone}, {LOOK_TEXT[picture.look]}",
             f"camera: {design.name}, {design.summary}, {design.material_name}",
-            *(f"note: {note}" for note in picture.notes),
+            *(f"note: {note}" for note in (*assumed([camera], given), *picture.notes)),
         ]
     )

@@ -19,8 +19,9 @@ from pinsim.scene import DistanceMap, Scene
 
 Array = NDArray[np.float64]
 
-# A transfer function below this everywhere beyond a frequency carries no visible detail there.
-NEGLIGIBLE_OTF = 3e-3
+# A transfer function below this everywhere beyond a frequency carries no visible detail there: in
+# the mere shadow of a large hole it has fallen to this at 9 cycles across the hole.
+NEGLIGIBLE_OTF = 1e-2
 # Where diffraction ends the transfer function for good soon after, the grid goes on to that end:
 # cut off before, even a trace of it rings around points of light.
 ENDED_OTF = 3e-4

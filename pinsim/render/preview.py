@@ -1,11 +1,13 @@
 """The whole road in one call: a Scene through a Camera to a Picture."""
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.camera import Camera
 from pinsim.errors import DesignError
-from pinsim.exposure import gain_of
+from pinsim.exposure import exposure_note, gain_of
 from pinsim.progress import Progress, Reporter, ignore
 from pinsim.render.develop import LOOKS, Look
 from pinsim.render.illuminate import illuminate
@@ -44,7 +46,8 @@ def preview(
     """
     if look not in LOOKS:
         raise DesignError(f"look is {look!r}; it must be one of: {', '.join(LOOKS)}.")
-    gain = gain_of(camera, time_s=time_s, ev=scene.ev if ev is None else ev)
+    light_ev = scene.ev if ev is None else ev
+    gain = gain_of(camera, time_s=time_s, ev=light_ev)
     if width_px is not None and not 16 <= width_px <= MAX_WIDTH_PX:
         raise DesignError(
             f"a picture {width_px} px wide is not possible; give 16 to {MAX_WIDTH_PX}."
@@ -53,6 +56,8 @@ def preview(
         scene, camera, wavelength_nm=wavelength_nm, averaged_px=width_px if averaged else None
     )
     notes = [*scene.notes, *plan.notes]
+    if time_s is not None and light_ev is not None:
+        notes.append(exposure_note(camera, time_s=time_s, ev=light_ev))
     coarse = coarse_photo_note(scene, plan)
     if coarse:
         notes.append(coarse)
@@ -60,10 +65,12 @@ def preview(
     view = project(scene, plan)
     covered = view.covered_share
     if covered < 1.0:
+        # Rounded down: a frame that is not all covered is never said to be.
+        share = math.floor(1000.0 * covered) / 10.0
         notes.append(
-            f"the photo covers {100.0 * covered:.0f} % of the frame; the rest is hatched "
-            f"(the film sees {camera.horizontal_view_deg:.0f} deg across, "
-            f"the photo {scene.horizontal_view_deg:.0f} deg)"
+            f"the photo covers {share:g} % of the frame; the rest is hatched (the film sees "
+            f"{camera.horizontal_view_deg:.0f} x {camera.vertical_view_deg:.0f} deg, "
+            f"the photo {scene.horizontal_view_deg:.0f} x {scene.vertical_view_deg:.0f} deg)"
         )
     view = illuminate(view)
     if view.unlit_share > 0.0:

@@ -64,10 +64,10 @@ class Scene:
             raise SceneError(out_of_range("distance", self.distance, "mm", NEAREST_MM, math.inf))
         if self.ev is not None and not EV_RANGE[0] <= self.ev <= EV_RANGE[1]:
             raise SceneError(out_of_range("light.ev", self.ev, "EV", *EV_RANGE))
-        if self.projection == "equirectangular" and self._vertical_deg > 180.0 + 1e-6:
+        if self.projection == "equirectangular" and self.vertical_view_deg > 180.0 + 1e-6:
             raise SceneError(
                 f"an equirectangular picture of {self.photo.shape[1]} x {self.photo.shape[0]} pixels "
-                f"and {self.horizontal_view_deg:g} deg would be {self._vertical_deg:g} deg high; "
+                f"and {self.horizontal_view_deg:g} deg would be {self.vertical_view_deg:g} deg high; "
                 "crop it to at most 180 deg."
             )
 
@@ -81,8 +81,12 @@ class Scene:
         return 0.5 * columns / math.tan(0.5 * view)
 
     @property
-    def _vertical_deg(self) -> float:
-        return math.degrees(self.photo.shape[0] / self.focal_length_px)
+    def vertical_view_deg(self) -> float:
+        """The photo's angle of view from its lower edge to its upper."""
+        half = 0.5 * self.photo.shape[0] / self.focal_length_px
+        if self.projection == "equirectangular":
+            return math.degrees(2.0 * half)
+        return math.degrees(2.0 * math.atan(half))
 
     @classmethod
     def from_light(
