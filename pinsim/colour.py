@@ -3,6 +3,7 @@
 IEC 61966-2-1: V = 12.92 L up to L = 0.0031308, else 1.055 L^(1/2.4) - 0.055. White is 1.0.
 """
 
+from concurrent.futures import ThreadPoolExecutor
 from functools import lru_cache
 
 import numpy as np
@@ -35,6 +36,7 @@ def srgb_table(bits: int) -> Float:
 # Encoding a whole picture by the power function costs more than rendering it. The table is even in
 # the square root of light: there it is fine where sRGB is steep, so one half code is never missed.
 _STEPS = 1 << 14
+_CHUNK = 1 << 18  # values encoded at once, small enough to stay in the processor's cache
 
 
 @lru_cache(maxsize=2)
@@ -45,9 +47,19 @@ def _encode_table(top: int) -> NDArray[np.uint16]:
 
 def encode_8bit(linear: Float) -> NDArray[np.uint8]:
     """Encode linear light, any shape, to sRGB codes 0..255, at most one code from exact rounding."""
-    root = np.sqrt(np.clip(linear, 0.0, 1.0))
-    index = (root * np.float32(_STEPS) + np.float32(0.5)).astype(np.uint16)
-    return np.take(_encode_table(255).astype(np.uint8), index)
+    table = _encode_table(255).astype(np.uint8)
+    flat = np.ascontiguousarray(linear).reshape(-1)
+    codes = np.empty(flat.shape, np.uint8)
+
+    def encode(start: int) -> None:
+        part = slice(start, start + _CHUNK)
+        root = np.sqrt(np.clip(flat[part], 0.0, 1.0))
+        index = (root * np.float32(_STEPS) + np.float32(0.5)).astype(np.uint16)
+        np.take(table, index, out=codes[part], mode="clip")
+
+    with ThreadPoolExecutor(2) as pool:
+        list(pool.map(encode, range(0, flat.size, _CHUNK)))
+    return codes.reshape(linear.shape)
 
 
 def encode_16bit(linear: Float) -> NDArray[np.uint16]:

@@ -31,6 +31,8 @@ HEADROOM = 1.06
 # Light from a point that falls farther away than the margin; what it would add is of the order of
 # this share of the difference between the true and the imagined surroundings.
 TAIL_SHARE = 3e-3
+LARGE_TAIL_SHARE = 6e-3
+LARGE_FRAME_PX = 800_000
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
 MAX_GRID_PIXELS = 60_000_000
@@ -237,7 +239,9 @@ def _with_margins(
     longest_mm = 1e-6 * max(float(c.wavelengths_nm.max()) for c in material.channels)
     # Share 2 lambda z / (pi^2 d r) of a point's light lies beyond r: half the slope of the
     # transfer function at zero, which no focus changes.
-    tail_mm = 2.0 * longest_mm * z / (math.pi**2 * d * TAIL_SHARE)
+    large = shape[0] * shape[1] > LARGE_FRAME_PX
+    share = LARGE_TAIL_SHARE if large else TAIL_SHARE
+    tail_mm = 2.0 * longest_mm * z / (math.pi**2 * d * share)
     shadow_mm = camera.hole.greatest_mm * (1.0 + z / nearest_mm)
     # At most half the frame beyond each side: past that a tail this faint is cheaper imagined.
     widest = pitch_mm * max(0.25 * (shape[0] + shape[1]), CHEAP_MARGIN_PX)
