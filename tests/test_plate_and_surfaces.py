@@ -250,3 +250,13 @@ def test_a_hole_as_large_as_the_frame_is_refused(hole):
 def test_a_bend_radius_that_is_no_radius_is_refused(radius_mm):
     with pytest.raises(pinsim.DesignError, match="bend radius"):
         pinsim.Film(width_mm=50.0, height_mm=50.0, bend_radius_mm=radius_mm)
+
+
+@pytest.mark.parametrize("axis", ["vertical", "horizontal"])
+@pytest.mark.parametrize("bend_radius_mm", [np.inf, 60.0, 30.0, 200.0])
+def test_a_ray_meets_the_film_where_that_film_point_looks(bend_radius_mm, axis):
+    """Geometry: back along the ray from a film point stands that film point; no source needed."""
+    surface = FilmSurface(focal_length_mm=60.0, bend_radius_mm=bend_radius_mm, axis=axis)
+    for u, v in [(0.0, 0.0), (25.0, 0.0), (-31.0, 12.0), (8.0, -27.0)]:
+        x, y, ahead = surface.points_mm(u, v)
+        assert surface.meet_mm(x / ahead, y / ahead) == pytest.approx((u, v), abs=1e-9)

@@ -80,6 +80,28 @@ class FilmSurface:
         first, second = (aside, straight) if self.axis == "vertical" else (straight, aside)
         return np.stack([first, second, ahead], axis=-1)
 
+    def coordinate_mm(self, angle_rad: float, along: Literal["u", "v"]) -> float:
+        """Return the film coordinate that a ray meets on the film's middle line along u or v.
+
+        angle_rad : between the ray and the hole's axis. By the law of sines in the triangle of hole,
+        bend's middle and film point.
+        """
+        bent = not self.flat and (along == "u") == (self.axis == "vertical")
+        if not bent:
+            return self.focal_length_mm * math.tan(angle_rad)
+        beside = (self.focal_length_mm - self.bend_radius_mm) / self.bend_radius_mm
+        return self.bend_radius_mm * (angle_rad + math.asin(beside * math.sin(angle_rad)))
+
+    def meet_mm(self, tangent_right: float, tangent_up: float) -> tuple[float, float]:
+        """Return the film point (u, v) that a ray ahead meets, by its slopes right and up."""
+        if self.flat:
+            return self.focal_length_mm * tangent_right, self.focal_length_mm * tangent_up
+        if self.axis == "vertical":
+            u = self.coordinate_mm(math.atan(tangent_right), "u")
+            return u, tangent_up * float(self.points_mm(u, 0.0)[2])
+        v = self.coordinate_mm(math.atan(tangent_up), "v")
+        return tangent_right * float(self.points_mm(0.0, v)[2]), v
+
     def tangents(self, u_mm: ArrayLike, v_mm: ArrayLike) -> Array:
         """Return the film's unit tangents (..., 3, 2) along u and v."""
         u, v = np.broadcast_arrays(np.asarray(u_mm, np.float64), np.asarray(v_mm, np.float64))

@@ -26,20 +26,16 @@ DETAIL_SHARE = 0.16  # of the picture's shorter side
 
 @dataclass(frozen=True, slots=True)
 class _Window:
-    """A part of the scene by the tangents of its edges, right and up from the hole's axis."""
+    """A part of the scene by the angles of its edges, rad, right and up from the hole's axis.
+
+    Angles are those along the film's middle lines, so that a window is the same part of the scene
+    on films of any depth and bend.
+    """
 
     left: float
     right: float
     bottom: float
     top: float
-
-    @property
-    def width(self) -> float:
-        return self.right - self.left
-
-    @property
-    def height(self) -> float:
-        return self.top - self.bottom
 
     def common(self, other: "_Window") -> "_Window":
         return _Window(
@@ -56,56 +52,100 @@ def _seen(picture: Picture) -> _Window:
     columns = np.flatnonzero(~np.isnan(picture.exposure[..., 0]).all(axis=0))
     if rows.size == 0:
         raise DesignError("the photo shows nothing of what this film sees; check shift and view.")
+    top, left = float(rows[0]), float(columns[0])
+    return _window(picture, Part(top, left, rows[-1] + 1.0 - top, columns[-1] + 1.0 - left))
+
+
+def _window(picture: Picture, part: Part) -> _Window:
+    """Return the angles of the edges of a part of a picture."""
     height, width = picture.exposure.shape[:2]
-    film, z = picture.camera.film, picture.camera.focal_length_mm
-    right = (np.array([columns[0], columns[-1] + 1]) - 0.5 * width) * picture.pitch_mm
-    up = (0.5 * height - np.array([rows[-1] + 1, rows[0]])) * picture.pitch_mm
-    return _Window(
-        (right[0] + film.shift_right_mm) / z,
-        (right[1] + film.shift_right_mm) / z,
-        (up[0] + film.shift_up_mm) / z,
-        (up[1] + film.shift_up_mm) / z,
-    )
+    film, pitch = picture.camera.film, picture.pitch_mm
+    u = (np.array([part.left, part.left + part.width]) - 0.5 * width) * pitch
+    v = (0.5 * height - np.array([part.top + part.height, part.top])) * pitch
+    surface = picture.camera.surface
+    right = surface.points_mm(u + film.shift_right_mm, 0.0)
+    up = surface.points_mm(0.0, v + film.shift_up_mm)
+    across = np.arctan2(right[:, 0], right[:, 2])
+    above = np.arctan2(up[:, 1], up[:, 2])
+    return _Window(float(across[0]), float(across[1]), float(above[0]), float(above[1]))
 
 
 def _part(picture: Picture, window: _Window) -> Part:
     """Return where a window lies in a picture's exposure."""
-    rows, columns = picture.exposure.shape[:2]
-    film, z = picture.camera.film, picture.camera.focal_length_mm
-    per = z / picture.pitch_mm
-    left = window.left * per - film.shift_right_mm / picture.pitch_mm + 0.5 * columns
-    top = 0.5 * rows - window.top * per + film.shift_up_mm / picture.pitch_mm
-    return Part(top, left, window.height * per, window.width * per)
+    height, width = picture.exposure.shape[:2]
+    film, pitch = picture.camera.film, picture.pitch_mm
+    surface = picture.camera.surface
+    left, right = (
+        (surface.coordinate_mm(angle, "u") - film.shift_right_mm) / pitch + 0.5 * width
+        for angle in (window.left, window.right)
+    )
+    bottom, top = (
+        0.5 * height - (surface.coordinate_mm(angle, "v") - film.shift_up_mm) / pitch
+        for angle in (window.bottom, window.top)
+    )
+    return Part(top, left, bottom - top, right - left)
 
 
-def _shown(picture: Picture, window: _Window, shape: tuple[int, int]) -> NDArray[np.uint8]:
-    exposure = resample_part(picture.exposure, _part(picture, window), shape)
+def _shown(picture: Picture, part: Part, shape: tuple[int, int]) -> NDArray[np.uint8]:
+    exposure = resample_part(picture.exposure, part, shape)
     codes = develop(exposure, gain=picture.gain, tone=picture.camera.tone)
     return np.asarray(turn(codes, picture.look), np.uint8)
 
 
-def _details(window: _Window, picture: Picture) -> dict[str, _Window]:
-    """Return the centre and the corner that shows most, as windows of one size."""
-    side = DETAIL_SHARE * min(window.width, window.height)
-    x = 0.5 * (window.left + window.right - side)
-    y = 0.5 * (window.bottom + window.top - side)
-    inset = 0.15 * side
-    lows = {"lower": window.bottom + inset, "upper": window.top - inset - side}
-    lefts = {"left": window.left + inset, "right": window.right - inset - side}
+def _matching(part: Part, picture: Picture, other: Picture) -> Part:
+    """Return the part of another picture that shows the same small part of the scene.
 
-    def contrast(place: _Window) -> float:
-        seen = resample_part(picture.exposure, _part(picture, place), (48, 48))
+    Found by the rays to the middles of its four edges.
+    """
+    x, y = part.left + 0.5 * part.width, part.top + 0.5 * part.height
+    edges = [
+        (part.left, y),
+        (part.left + part.width, y),
+        (x, part.top),
+        (x, part.top + part.height),
+    ]
+    height, width = picture.exposure.shape[:2]
+    film, pitch = picture.camera.film, picture.pitch_mm
+    rows, columns = other.exposure.shape[:2]
+    found = []
+    for column, row in edges:
+        ray = picture.camera.surface.points_mm(
+            (column - 0.5 * width) * pitch + film.shift_right_mm,
+            (0.5 * height - row) * pitch + film.shift_up_mm,
+        )
+        u, v = other.camera.surface.meet_mm(float(ray[0] / ray[2]), float(ray[1] / ray[2]))
+        found.append(
+            (
+                (u - other.camera.film.shift_right_mm) / other.pitch_mm + 0.5 * columns,
+                0.5 * rows - (v - other.camera.film.shift_up_mm) / other.pitch_mm,
+            )
+        )
+    left, right, top, bottom = found[0][0], found[1][0], found[2][1], found[3][1]
+    return Part(top, left, bottom - top, right - left)
+
+
+def _details(window: _Window, picture: Picture) -> dict[str, Part]:
+    """Return the centre and the corner that shows most, as squares of one size on this film."""
+    whole = _part(picture, window)
+    side = DETAIL_SHARE * min(whole.width, whole.height)
+    inset = 0.15 * side
+    tops = {"upper": whole.top + inset, "lower": whole.top + whole.height - inset - side}
+    lefts = {"left": whole.left + inset, "right": whole.left + whole.width - inset - side}
+
+    def contrast(place: Part) -> float:
+        seen = resample_part(picture.exposure, place, (48, 48))
         if np.isnan(seen).any():
             return -1.0
         return float(seen.std() / max(float(seen.mean()), 0.02))
 
     corners = {
-        f"{low} {left}": _Window(lefts[left], lefts[left] + side, lows[low], lows[low] + side)
-        for low in lows
-        for left in lefts
+        f"{top} {left}": Part(tops[top], lefts[left], side, side) for top in tops for left in lefts
     }
     name = max(corners, key=lambda one: contrast(corners[one]))
-    return {"centre": _Window(x, x + side, y, y + side), f"corner, {name}": corners[name]}
+    middle = Part(
+        whole.top + 0.5 * (whole.height - side), whole.left + 0.5 * (whole.width - side), side, side
+    )
+    return {"centre": middle, f"corner, {name}": corners[name]}
 
 
 def compare(
@@ -141,7 +181,7 @@ def compare(
             on_picture(picture)
         pictures.append(picture)
     window = _seen(pictures[0]).common(_seen(pictures[1]))
-    if window.width <= 0.0 or window.height <= 0.0:
+    if window.right <= window.left or window.top <= window.bottom:
         raise DesignError("the two designs see no common part of the scene; check their shifts.")
     numbers = [figures(camera, wavelength_nm=wavelength_nm, best=False) for camera in cameras]
     return _laid_out(scene, pictures, numbers, window)
@@ -150,8 +190,9 @@ def compare(
 def _laid_out(
     scene: Scene, pictures: list[Picture], numbers: list[Figures], window: _Window
 ) -> Sheet:
-    scale = PICTURE_PX / max(window.width, window.height)
-    shape = (max(1, round(window.height * scale)), max(1, round(window.width * scale)))
+    whole = _part(pictures[0], window)
+    scale = PICTURE_PX / max(whole.width, whole.height)
+    shape = (max(1, round(whole.height * scale)), max(1, round(whole.width * scale)))
     # Captions need room even beside a slim picture.
     column = max(shape[1], 640)
     detail_px = (column - GAP) // 2
@@ -178,14 +219,15 @@ def _laid_out(
         for line, size in captions[i]:
             y = paper.text(x, y, line, size=size, width=column, faint=size < 22)
         top = head + caption_height + GAP // 2
-        paper.picture(_shown(picture, window, shape), x, top)
+        own = _part(picture, window)
+        paper.picture(_shown(picture, own, shape), x, top)
         for j, (name, place) in enumerate(details.items()):
-            across, down = _place_on(place, window, shape, look)
-            size_px = round(place.width * scale)
-            paper.mark(x + across, top + down, size_px, size_px, name.split(",", maxsplit=1)[0])
+            part = _matching(place, pictures[0], picture)
+            across, down, wide, high = _place_on(part, own, shape, look)
+            paper.mark(x + across, top + down, wide, high, name.split(",", maxsplit=1)[0])
             at = x + j * (detail_px + GAP)
-            paper.picture(_shown(picture, place, (detail_px, detail_px)), at, detail_top)
-            enlarged = detail_px / size_px
+            paper.picture(_shown(picture, part, (detail_px, detail_px)), at, detail_top)
+            enlarged = detail_px / wide
             paper.text(
                 at,
                 detail_top + detail_px + 6,
@@ -199,16 +241,18 @@ def _laid_out(
 
 
 def _place_on(
-    place: _Window, window: _Window, shape: tuple[int, int], look: Look
-) -> tuple[int, int]:
-    """Return where a place stands on the shown picture: pixels from its left and upper edge."""
-    across = (place.left - window.left) / window.width
-    down = (window.top - place.top) / window.height
+    part: Part, whole: Part, shape: tuple[int, int], look: Look
+) -> tuple[int, int, int, int]:
+    """Return where a part stands on the shown picture: left and upper edge, width and height, px."""
+    across = (part.left - whole.left) / whole.width
+    down = (part.top - whole.top) / whole.height
+    wide, high = part.width / whole.width, part.height / whole.height
     if look == "screen":
-        across = 1.0 - across - place.width / window.width
+        across = 1.0 - across - wide
     if look != "upright":
-        down = 1.0 - down - place.height / window.height
-    return round(across * shape[1]), round(down * shape[0])
+        down = 1.0 - down - high
+    height, width = shape
+    return round(across * width), round(down * height), round(wide * width), round(high * height)
 
 
 def _captions(picture: Picture, numbers: Figures) -> list[tuple[str, int]]:
@@ -244,7 +288,9 @@ def _verdict(numbers: list[Figures]) -> str:
     )
     ev = numbers[0].times_s[0][0]
     time = (
-        f"the {side[slow]} one needs {times[slow] / times[1 - slow]:.2g} x the time "
+        f"both need {format_time(times[0])} at EV {ev:g}, metered, no reciprocity correction."
+        if times[slow] < 1.02 * times[1 - slow]
+        else f"{'it' if slow == best and ratio >= 1.02 else f'the {side[slow]} one'} needs {times[slow] / times[1 - slow]:.2g} x the time "
         f"({format_time(times[0])} left, {format_time(times[1])} right at EV {ev:g}, "
         "metered, no reciprocity correction)."
     )
