@@ -3,19 +3,13 @@
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from pinsim.best import light_for
 from pinsim.camera import Camera, Hole
-from pinsim.optics import Light, film_otf
-
-Array = NDArray[np.float64]
+from pinsim.optics.sharpness import detail_anywhere
 
 CONTRAST = 0.2
 _STEPS = 400
-_COLOURS = 9
-# In the contrast curve of every hole of a useful size 20 % comes before this many cycles across it.
-_CYCLES_ACROSS = 6.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -58,30 +52,23 @@ class AgainstRound:
 
 def against_round(camera: Camera, *, wavelength_nm: float | None = None) -> AgainstRound:
     """Return what a camera's hole does against a round one, for its material's light or one colour."""
-    light = light_for(wavelength_nm, camera.material_name)
-    wavelengths, shares = _few_colours(light)
+    light = light_for(wavelength_nm, camera.material_name).condensed()
     hole = Hole(
         diameter_mm=camera.hole.diameter_mm, plate_thickness_mm=camera.hole.plate_thickness_mm
     )
     round_camera = replace(camera, hole=hole)
 
-    cutoff = camera.hole.greatest_mm / (float(wavelengths.min()) * 1e-6 * camera.focal_length_mm)
-    frequency = np.linspace(0.0, min(cutoff, _CYCLES_ACROSS / camera.hole.diameter_mm), _STEPS)
-    none = np.zeros_like(frequency)
-
     def finest(of: Camera) -> tuple[float, float]:
-        # Both directions in one call, as a traced opening's overlap is made anew for each wavelength.
-        total = np.zeros((2, _STEPS), np.complex128)
-        for wavelength, share in zip(wavelengths, shares, strict=True):
-            total += share * film_otf(
-                np.stack([frequency, none]),
-                np.stack([none, frequency]),
-                camera=of,
-                film_point_mm=(0.0, 0.0),
-                wavelength_nm=float(wavelength),
-            )
-        right, up = np.abs(total)
-        return _first_fall(frequency, right), _first_fall(frequency, up)
+        right, up = detail_anywhere(
+            np.eye(2),
+            rays=of.surface.chief_rays(0.0, 0.0),
+            opening=of.opening,
+            plate_thickness_mm=of.plate_thickness_mm,
+            light=light,
+            contrasts=(CONTRAST,),
+            samples=_STEPS,
+        )[:, 0]
+        return float(right), float(up)
 
     right, up = finest(camera)
     of_round, _ = finest(round_camera)
@@ -94,31 +81,3 @@ def against_round(camera: Camera, *, wavelength_nm: float | None = None) -> Agai
         corner_light=float(np.squeeze(camera.opening.clear_share(apart))),
         round_corner_light=float(np.squeeze(round_camera.opening.clear_share(apart))),
     )
-
-
-def _few_colours(light: Light) -> tuple[Array, Array]:
-    """Return a light by at most nine wavelengths and their shares.
-
-    Materials list a wavelength once for each channel, and finely; a contrast averaged over a third of
-    them differs by less than 1e-3.
-    """
-    wavelengths, where = np.unique(light.wavelengths_nm, return_inverse=True)
-    shares = np.bincount(where, weights=light.shares)
-    groups = np.array_split(np.arange(wavelengths.size), min(wavelengths.size, _COLOURS))
-    few = np.array([float(shares[g].sum()) for g in groups])
-    means = [
-        float(wavelengths[g] @ shares[g]) / max(share, 1e-12)
-        for g, share in zip(groups, few, strict=True)
-    ]
-    lit = few > 1e-6
-    return np.array(means)[lit], few[lit]
-
-
-def _first_fall(frequency: Array, curve: Array) -> float:
-    """Return where a contrast curve first falls to 20 %; its end if it does not before it."""
-    below = np.flatnonzero(curve <= CONTRAST)
-    if below.size == 0:
-        return float(frequency[-1])
-    i = int(below[0])
-    step = (curve[i - 1] - CONTRAST) / (curve[i - 1] - curve[i])
-    return float(frequency[i - 1] + step * (frequency[i] - frequency[i - 1]))

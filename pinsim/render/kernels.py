@@ -22,7 +22,8 @@ from numpy.typing import NDArray
 
 from pinsim.camera import Camera
 from pinsim.material import Channel
-from pinsim.optics import ChiefRays, Ellipse, Light, ray_otf
+from pinsim.optics import ChiefRays, Ellipse, Light
+from pinsim.optics.sharpness import light_ray_otf
 
 Array = NDArray[np.float64]
 Values = NDArray[np.inexact[Any]]  # real where the opening is its own mirror image
@@ -98,30 +99,6 @@ class Kernels:
         return int(good[0]) if good.size else len(self.fields)
 
 
-def fewer_wavelengths(light: Light, count: int) -> Light:
-    """Return at most `count` wavelengths that stand for a light: its own Gauss quadrature.
-
-    Exact for whatever varies with wavelength like a polynomial of degree 2 count - 1. Golub and
-    Welsch, Math. Comp. 23 (1969) 221, on the light's discrete measure by the Lanczos recurrence.
-    """
-    if light.wavelengths_nm.size <= count:
-        return light
-    middle = float(light.shares @ light.wavelengths_nm)
-    x = light.wavelengths_nm - middle
-    previous, current = np.zeros_like(x), np.sqrt(light.shares)
-    diagonal, beside = np.zeros(count), np.zeros(count)
-    for k in range(count):
-        moved = x * current - (beside[k - 1] * previous if k else 0.0)
-        diagonal[k] = current @ moved
-        moved = moved - diagonal[k] * current
-        beside[k] = np.linalg.norm(moved)
-        previous, current = current, moved / beside[k]
-    jacobi = np.diag(diagonal) + np.diag(beside[:-1], 1) + np.diag(beside[:-1], -1)
-    nodes, vectors = np.linalg.eigh(jacobi)
-    shares = vectors[0] ** 2
-    return Light(wavelengths_nm=nodes + middle, shares=shares / shares.sum())
-
-
 def chebyshev_nodes(count: int, low: float, high: float) -> Array:
     """Return `count` nodes of an interval, symmetric to the last bit about its middle."""
     angle = np.pi * (np.arange(count) + 0.5) / count
@@ -168,18 +145,16 @@ class _Sampler:
         camera = self._camera
         rays = _clear_rays(camera, u_mm, v_mm)
         distance = math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0)
-        chosen = light or self._light
-        total: Values = np.zeros(len(self._frequency))
-        for wavelength, share in zip(chosen.wavelengths_nm, chosen.shares, strict=True):
-            total = total + share * ray_otf(
-                self._frequency,
-                rays=rays,
-                opening=camera.opening,
-                plate_thickness_mm=camera.plate_thickness_mm,
-                distance_mm=distance,
-                wavelength_nm=float(wavelength),
-            )
-        return total.reshape(self._shape)
+        values = light_ray_otf(
+            self._frequency,
+            rays=rays,
+            opening=camera.opening,
+            plate_thickness_mm=camera.plate_thickness_mm,
+            light=light or self._light,
+            distance_mm=distance,
+        )
+        table: Values = values.real if camera.opening.mirrored else values
+        return table.reshape(self._shape)
 
 
 def _clear_rays(camera: Camera, u_mm: float, v_mm: float) -> ChiefRays:
@@ -250,7 +225,7 @@ def _sampled(
     camera: Camera, nodes: tuple[Array, Array, Array], radii: Array, light: Light
 ) -> tuple[Values, Values]:
     """Return samples (points, frequencies) for few wavelengths, and what these leave out."""
-    sampler = _Sampler(camera, radii, fewer_wavelengths(light, FEW_WAVELENGTHS))
+    sampler = _Sampler(camera, radii, light.condensed(FEW_WAVELENGTHS))
     samples = _samples(camera, nodes, sampler)
     # The point nearest to the axis tells what the few wavelengths leave out.
     near_u, near_v = (float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])

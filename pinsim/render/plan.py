@@ -13,8 +13,9 @@ from numpy.typing import NDArray
 from pinsim.camera import Camera
 from pinsim.errors import DesignError, out_of_range
 from pinsim.material import LONGEST_NM, SHORTEST_NM, Material
-from pinsim.optics import Ellipse, finest_detail, ray_otf
-from pinsim.render.kernels import FilmRange, Kernels, fewer_wavelengths, prepared
+from pinsim.optics import Ellipse, finest_detail
+from pinsim.optics.sharpness import light_ray_otf
+from pinsim.render.kernels import FilmRange, Kernels, prepared
 from pinsim.scene import DistanceMap, Scene
 
 Array = NDArray[np.float64]
@@ -35,8 +36,9 @@ LARGE_TAIL_SHARE = 6e-3
 LARGE_FRAME_PX = 800_000
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
-MAX_GRID_PIXELS = 60_000_000
+MAX_GRID_PIXELS = 25_000_000
 MAX_WIDTH_PX = 20_000
+_FEW_WAVELENGTHS = 5
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -119,19 +121,15 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tup
         frequency = (radius[:, None, None] * directions).reshape(-1, 2)
         strongest = np.zeros(radius.size)
         for channel in material.channels:
-            light = fewer_wavelengths(channel.light, 5)
-            total: Array = np.zeros(len(frequency))
-            for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
-                values = ray_otf(
-                    frequency,
-                    rays=rays,
-                    opening=opening,
-                    plate_thickness_mm=0.0,
-                    distance_mm=distance_mm,
-                    wavelength_nm=float(wavelength),
-                )
-                total = total + share * values
-            strongest = np.maximum(strongest, np.abs(total).reshape(radius.size, -1).max(axis=1))
+            values = light_ray_otf(
+                frequency,
+                rays=rays,
+                opening=opening,
+                plate_thickness_mm=0.0,
+                light=channel.light.condensed(_FEW_WAVELENGTHS),
+                distance_mm=distance_mm,
+            )
+            strongest = np.maximum(strongest, np.abs(values).reshape(radius.size, -1).max(axis=1))
         here = float(radius[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
         last = float(radius[np.flatnonzero(strongest > ENDED_OTF)[-1]])
         if last < END_IS_NEAR * here and last < 0.999 * top:

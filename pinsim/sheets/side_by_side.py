@@ -287,10 +287,11 @@ def _verdict(numbers: list[Figures]) -> str:
         else f"The {side[best]} one draws {ratio:.2f} x finer far detail in the middle"
     )
     ev = numbers[0].times_s[0][0]
+    who = "it" if slow == best and ratio >= 1.02 else f"the {side[slow]} one"
     time = (
         f"both need {format_time(times[0])} at EV {ev:g}, metered, no reciprocity correction."
         if times[slow] < 1.02 * times[1 - slow]
-        else f"{'it' if slow == best and ratio >= 1.02 else f'the {side[slow]} one'} needs {times[slow] / times[1 - slow]:.2g} x the time "
+        else f"{who} needs {times[slow] / times[1 - slow]:.2g} x the time "
         f"({format_time(times[0])} left, {format_time(times[1])} right at EV {ev:g}, "
         "metered, no reciprocity correction)."
     )
