@@ -165,7 +165,7 @@ def make_plan(
     wavelength_nm: float | None = None,
     averaged_px: int | None = None,
 ) -> RenderPlan:
-    """Decide grid, margin and layers; refuse what cannot be rendered.
+    """Decide grid, margin and kernels; refuse what cannot be rendered.
 
     averaged_px : columns of a coarser picture whose pixels are means, if one is wanted.
     """
