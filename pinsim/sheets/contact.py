@@ -1,7 +1,11 @@
-"""A contact sheet: scenes down, designs across, each with its caption."""
+"""A contact sheet: scenes down, designs across, each with its centre enlarged and a caption."""
 
 import math
 from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
 
 from pinsim.camera import Camera
 from pinsim.errors import DesignError
@@ -9,11 +13,14 @@ from pinsim.progress import Progress, Reporter, ignore
 from pinsim.render.develop import LOOK_TEXT, Look
 from pinsim.render.picture import Picture
 from pinsim.render.preview import preview
+from pinsim.render.resample import Part, resample_part, whole
 from pinsim.scene import Scene
 from pinsim.sheets.lettering import GAP, Paper, Sheet, text_height
 
 CELL_PX = 460
 CELL_HEIGHT_PX = 460
+STRIP_PX = 120
+ENLARGED = 4.0
 MOST_ACROSS = 6
 WRAP_ACROSS = 3
 MOST_CELLS = 120
@@ -51,29 +58,52 @@ def contact_sheet(
     if len(scenes) == 1 and across > WRAP_ACROSS + 1:
         across = WRAP_ACROSS if across <= 4 * WRAP_ACROSS else MOST_ACROSS
     total = len(scenes) * len(cameras)
-    pictures: list[list[Picture]] = []
+    cells: list[list[_Cell]] = []
     for scene in scenes:
-        row: list[Picture] = []
+        row: list[_Cell] = []
         for camera in cameras:
-            done = len(pictures) * len(cameras) + len(row)
+            done = len(cells) * len(cameras) + len(row)
             report(Progress(done, total, f"{scene.name}, {camera.summary}"))
-            film = camera.film
-            width = CELL_PX * min(1.0, film.width_mm / film.height_mm * CELL_HEIGHT_PX / CELL_PX)
             picture = preview(
-                scene,
-                camera,
-                time_s=time_s,
-                ev=ev,
-                wavelength_nm=wavelength_nm,
-                look=look,
-                width_px=max(16, round(width)),
-                averaged=True,
+                scene, camera, time_s=time_s, ev=ev, wavelength_nm=wavelength_nm, look=look
             )
-            row.append(picture)
             if on_picture:
                 on_picture(picture)
-        pictures.append(row)
-    return _laid_out(pictures, across, look)
+            row.append(_cell(picture))
+        cells.append(row)
+    return _laid_out(cells, across, look)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Cell:
+    """One picture of the sheet, as small as it is shown: codes, a strip of its centre, caption."""
+
+    codes: NDArray[np.uint8]
+    strip: NDArray[np.uint8]
+    caption: list[tuple[str, int, bool]]
+    scene_name: str
+
+
+def _cell(picture: Picture) -> _Cell:
+    film = picture.camera.film
+    scale = min(CELL_PX / film.width_mm, CELL_HEIGHT_PX / film.height_mm)
+    shape = max(1, round(film.height_mm * scale)), max(1, round(film.width_mm * scale))
+    rows, columns = picture.exposure.shape[:2]
+    # The strip lies across the middle, ENLARGED times as large as the picture above it.
+    width = min(columns, columns * CELL_PX / (ENLARGED * shape[1]))
+    height = width * STRIP_PX / CELL_PX
+    middle = Part(0.5 * (rows - height), 0.5 * (columns - width), height, width)
+
+    def shown(part: Part, size: tuple[int, int]) -> NDArray[np.uint8]:
+        small = replace(picture, exposure=resample_part(picture.exposure, part, size))
+        return np.asarray(small.codes(), np.uint8)
+
+    return _Cell(
+        shown(whole(picture.exposure), shape),
+        shown(middle, (STRIP_PX, CELL_PX)),
+        _caption(picture),
+        picture.scene_name,
+    )
 
 
 def _caption(picture: Picture) -> list[tuple[str, int, bool]]:
@@ -89,33 +119,35 @@ def _caption(picture: Picture) -> list[tuple[str, int, bool]]:
     return lines
 
 
-def _laid_out(pictures: list[list[Picture]], across: int, look: Look) -> Sheet:
-    rows = [line[i : i + across] for line in pictures for i in range(0, len(line), across)]
+def _laid_out(cells: list[list[_Cell]], across: int, look: Look) -> Sheet:
+    rows = [line[i : i + across] for line in cells for i in range(0, len(line), across)]
     title = "Contact sheet"
+    legend = f"{LOOK_TEXT[look]}; below each its centre, {ENLARGED:g} x enlarged"
     width = across * (CELL_PX + GAP) + GAP
     heights = []
     for row in rows:
-        tallest = max(picture.exposure.shape[0] for picture in row)
+        tallest = max(cell.codes.shape[0] for cell in row)
         text = max(
-            sum(text_height(line, size=size, width=CELL_PX) for line, size, _ in _caption(picture))
-            for picture in row
+            sum(text_height(line, size=size, width=CELL_PX) for line, size, _ in cell.caption)
+            for cell in row
         )
         heights.append((tallest, text))
-    head = GAP + text_height(title, size=32) + text_height(LOOK_TEXT[look]) + GAP // 2
-    height = head + sum(a + b + 8 + GAP for a, b in heights)
+    head = GAP + text_height(title, size=32) + GAP // 2
+    head += text_height(legend, width=width - 2 * GAP)
+    height = head + sum(a + b + STRIP_PX + 16 + GAP for a, b in heights)
     paper = Paper(width, math.ceil(height))
     y = paper.text(GAP, GAP, title, size=32)
-    paper.text(GAP, y, LOOK_TEXT[look], faint=True, width=width - 2 * GAP)
+    paper.text(GAP, y, legend, faint=True, width=width - 2 * GAP)
     top = head
     for row, (tallest, text) in zip(rows, heights, strict=True):
-        for i, picture in enumerate(row):
+        for i, cell in enumerate(row):
             x = GAP + i * (CELL_PX + GAP)
-            codes = picture.codes()
             # Pictures of one row stand on one line, like prints on a shelf.
-            paper.picture(codes, x, top + tallest - codes.shape[0])
-            y = top + tallest + 8
-            for line, size, faint in _caption(picture):
+            paper.picture(cell.codes, x, top + tallest - cell.codes.shape[0])
+            paper.picture(cell.strip, x, top + tallest + 8)
+            y = top + tallest + STRIP_PX + 16
+            for line, size, faint in cell.caption:
                 y = paper.text(x, y, line, size=size, faint=faint, width=CELL_PX)
-        top += tallest + text + 8 + GAP
-    scenes = ", ".join(dict.fromkeys(p.scene_name for line in pictures for p in line))
+        top += tallest + STRIP_PX + text + 16 + GAP
+    scenes = ", ".join(dict.fromkeys(cell.scene_name for line in cells for cell in line))
     return paper.finished(f"pinsim contact sheet: {scenes}; {LOOK_TEXT[look]}")
