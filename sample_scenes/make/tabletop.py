@@ -661,7 +661,7 @@ def add_string(shop: Workshop, rng: np.random.Generator) -> None:
     fibres = []
     for points, _ in plies:
         for p in points[rng.random(len(points)) < 0.10]:
-            out = p - ([*at, 0, 0, radius]) if p[1] > 288 else np.array([0, 0, 1.0])
+            out = p - (at + np.array([0, 0, radius])) if p[1] > 288 else np.array([0, 0, 1.0])
             out = out / np.linalg.norm(out) * 0.5 + rng.normal(0, 0.5, 3)
             bend = rng.normal(0, 0.1, 3)
             k = np.linspace(0.0, 1.7, 5)[:, None]
@@ -821,7 +821,7 @@ def add_bouquet(shop: Workshop, rng: np.random.Generator, mouth: Array) -> None:
         (-0.34, 0.10, 70.0, 1.3),
         (0.62, -0.05, 84.0, 1.3),
     ):
-        start = [*mouth, x * 15, y * 14, -6]
+        start = mouth + np.array([x * 15, y * 14, -6])
         branch(rng, start, np.array([x, y, 0.95]), length, radius, 3, twigs)
     shop.curves("twig", twigs, matt([0.20, 0.125, 0.085], 0.65, 0.35), finer=True)
     straw: list[Curve] = []
@@ -831,12 +831,12 @@ def add_bouquet(shop: Workshop, rng: np.random.Generator, mouth: Array) -> None:
         (0.05, -0.3, 32.0),
         (-0.16, 0.2, 60.0),
     ):
-        start = [*mouth, x * 15, y * 14, -6]
+        start = mouth + np.array([x * 15, y * 14, -6])
         stem = wandering(rng, start, np.array([x, y, 1.0]), length, 0.0, 0.035)
         straw.append((stem, np.linspace(1.15, 0.85, len(stem))))
         add_seed_head(shop, rng, stem[-1], stem[-1] - stem[-2], rng.uniform(6.2, 8.4))
     for x, y, length in ((0.75, 0.0, 66.0), (0.95, -0.2, 60.0), (-0.75, -0.1, 64.0)):
-        start = [*mouth, x * 14, y * 14, -6]
+        start = mouth + np.array([x * 14, y * 14, -6])
         stem = wandering(rng, start, np.array([x, y, 1.0]), length, -0.012, 0.02)
         straw.append((stem, np.full(len(stem), 0.75)))
         grain_ear(rng, stem, straw)
@@ -847,7 +847,7 @@ def add_bouquet(shop: Workshop, rng: np.random.Generator, mouth: Array) -> None:
         (0.3, 0.25, 62.0, 28.0),
         (-0.55, 0.15, 54.0, 22.0),
     ):
-        start = [*mouth, x * 15, y * 14, -6]
+        start = mouth + np.array([x * 15, y * 14, -6])
         stem = wandering(rng, start, np.array([x, y, 1.1]), length, 0.0, 0.04)
         dry.append((stem, np.linspace(1.2, 0.7, len(stem))))
         umbel(rng, stem[-1], stem[-1] - stem[-2], size, dry)
@@ -1179,7 +1179,7 @@ def add_rule(shop: Workshop, rng: np.random.Generator, pixel_mm: float) -> None:
     brass, _ = tarnished(rng, (60, 300), [0.78, 0.55, 0.24], [0.36, 0.22, 0.09])
     for start in (0.0, length - 5.0):
         cap = slab(width + 0.5, 5.0, 2.8, edge=0.4)
-        cap = [*cap, 0.0, start, 0.25]
+        cap = cap + np.array([0.0, start, 0.25])
         shop.mesh("cap", placed(cap, *at), brass)
 
 
