@@ -5,7 +5,7 @@ opening.py       openings of any shape, and the overlap of each with itself
 traced.py        an opening of any outline, on a grid
 film_surface.py  flat and bent film: where its points lie, what the hole looks like from there
 film_transfer.py the transfer function anywhere on any film
-falloff.py       how much light reaches a flat film: distance, tilt, thickness of plate
+falloff.py       how much of the light a thick plate lets through
 sharpness.py     what these mean to an eye: finest detail, spot size, the best hole
 
 All lengths are mm, wavelengths nm, frequencies cycles/mm on the film.
@@ -14,7 +14,7 @@ All lengths are mm, wavelengths nm, frequencies cycles/mm on the film.
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from pinsim.optics.falloff import flat_falloff, plate_transmission
+    from pinsim.optics.falloff import plate_transmission
     from pinsim.optics.film_surface import ChiefRays, FilmSurface
     from pinsim.optics.film_transfer import OpticalCamera, film_otf, ray_otf
     from pinsim.optics.opening import Ellipse, Opening, Slit
@@ -40,7 +40,6 @@ __all__ = [
     "best_diameter_mm",
     "film_otf",
     "finest_detail",
-    "flat_falloff",
     "light_otf",
     "overlap_otf",
     "plate_transmission",
@@ -62,7 +61,6 @@ _ROOM_OF = {
     "best_diameter_mm": "sharpness",
     "film_otf": "film_transfer",
     "finest_detail": "sharpness",
-    "flat_falloff": "falloff",
     "light_otf": "sharpness",
     "overlap_otf": "round_hole",
     "plate_transmission": "falloff",

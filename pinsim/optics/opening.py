@@ -18,6 +18,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
+from pinsim.optics.falloff import lens_share
 from pinsim.optics.round_hole import gauss_legendre, node_count
 
 Array = NDArray[np.float64]
@@ -67,18 +68,12 @@ class Ellipse:
     def clear_share(self, plate_shift_mm: Array) -> Array:
         """Two equal ellipses apart: the overlap of two circles, after Gardner 1947 (from memory)."""
         x, y = (np.asarray(plate_shift_mm)[..., k] for k in (0, 1))
-        return _lens_share(np.hypot(x * (2.0 / self.right_mm), y * (2.0 / self.up_mm)))
+        return lens_share(np.hypot(x * (2.0 / self.right_mm), y * (2.0 / self.up_mm)))
 
     def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Array:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
         wave = (shift_mm @ curvature.T) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm])
         return disc_overlap(self._on_unit_disc(shift_mm), wave, self._on_unit_disc(plate_shift_mm))
-
-
-def _lens_share(distance: Array) -> Array:
-    """Return the overlap of two unit circles, their centres `distance` apart, over one circle."""
-    q = np.minimum(0.5 * distance, 1.0)
-    return np.asarray((2.0 / np.pi) * (np.arccos(q) - q * np.sqrt(1.0 - q * q)))
 
 
 def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
@@ -89,7 +84,7 @@ def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
     It is integrated in closed form along chords across the larger of the two, and by Gauss-Legendre
     along it, with x + c = sin t to take the edge's square root away.
     """
-    share = float(_lens_share(np.asarray(np.hypot(*plate_shift))))
+    share = float(lens_share(np.asarray(np.hypot(*plate_shift))))
     if share <= 0.0:
         return np.zeros(len(shift))
     thin = not plate_shift.any()

@@ -1,6 +1,6 @@
 """Exposure to tones for the eye: brightness, positive or negative, turned as it is looked at."""
 
-from typing import Literal, TypeVar
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -9,7 +9,6 @@ from pinsim.camera import Tone
 from pinsim.colour import encode_8bit, encode_16bit
 
 Float = NDArray[np.float32]
-Code = TypeVar("Code", np.uint8, np.uint16)
 
 Look = Literal["upright", "screen", "emulsion"]
 LOOKS = ("upright", "screen", "emulsion")

@@ -60,7 +60,6 @@ class RenderPlan:
     distances_mm: tuple[float, float]
     kernels: Kernels
     averaged: bool
-    natural_pitch_mm: float
     notes: tuple[str, ...] = ()
 
     def right_mm(self) -> Array:
@@ -214,7 +213,6 @@ def make_plan(
             camera, wavelength_nm, film_range, min(end, 1.0001 * math.sqrt(2.0) * HEADROOM * limit)
         ),
         averaged=pitch > 1.001 * natural,
-        natural_pitch_mm=natural,
         notes=tuple(notes),
     )
 
