@@ -5,6 +5,7 @@ Tags: Exif 2.32, CIPA DC-008 (from memory); 35 mm-equivalent angles computed ind
 """
 
 import math
+import re
 
 import numpy as np
 import pytest
@@ -12,7 +13,7 @@ from PIL import Image
 from PIL.TiffImagePlugin import IFDRational
 
 from pinsim import Scene, SceneError
-from pinsim.scene.exif_view import focal_length_px, horizontal_view_deg
+from pinsim.scene.exif_view import focal_length_px, horizontal_view_deg, told_focal_length
 
 FOCAL_LENGTH = 0x920A
 FOCAL_LENGTH_35MM = 0xA405
@@ -146,3 +147,57 @@ def test_damaged_exif_data_does_not_spoil_sound_pixels(tmp_path):
     )
     scene = Scene.load(path, horizontal_view_deg=60.0)
     assert scene.photo.shape == (40, 60)
+
+
+# What is told and cannot be ------------------------------------------------------------------
+
+
+@pytest.mark.parametrize(
+    ("tags", "note"),
+    [
+        ({FOCAL_LENGTH: 0}, "the focal length in its Exif data is 0; ignored"),
+        (
+            {FOCAL_LENGTH_35MM: 1},
+            r"\(1 mm in 35 mm film\) would be an angle of view of 174 deg; ignored",
+        ),
+        ({FOCAL_LENGTH_35MM: 9000}, r"\(9000 mm in 35 mm film\) would be .* 0.229 deg; ignored"),
+        (
+            {FOCAL_LENGTH: 35.0, X_RESOLUTION: 72},
+            r"\(35 mm at 2.83 pixels per mm\) would be an angle of view of 176 deg; ignored",
+        ),
+        ({FOCAL_LENGTH: 35.0, X_RESOLUTION: 1e9}, r"would be an angle of view of .* deg; ignored"),
+    ],
+)
+def test_an_angle_that_no_lens_has_is_ignored_with_a_word(tags, note):
+    """2 atan(long side / 2 f), computed independently; only 2 to 170 deg are believed."""
+    focal_px, told = told_focal_length(tags, 6000, 4000)
+    assert focal_px is None
+    assert re.search(note, told), told
+
+
+def test_an_absurd_equivalent_gives_way_to_what_the_sensor_tells():
+    tags = {FOCAL_LENGTH_35MM: 65535, FOCAL_LENGTH: 35.0, X_RESOLUTION: 6000 / 36 * 25.4}
+    focal_px, told = told_focal_length(tags, 6000, 4000)
+    assert horizontal_view_deg(focal_px, 6000) == pytest.approx(54.4322, abs=PLACES)
+    assert "65535 mm in 35 mm film" in told
+
+
+def test_zero_is_no_word_when_the_equivalent_tells():
+    assert told_focal_length({FOCAL_LENGTH: 0, FOCAL_LENGTH_35MM: 24}, 6000, 4000).note == ""
+    assert told_focal_length({FOCAL_LENGTH_35MM: 0}, 6000, 4000) == (None, "")
+
+
+@pytest.mark.parametrize(("unit", "resolution"), [(4, 6000 / 36), (5, 6000 / 36_000)])
+def test_raw_files_may_count_pixels_per_mm_or_um(unit, resolution):
+    """TIFF/EP, ISO 12234-2, FocalPlaneResolutionUnit: 4 mm, 5 um (from memory)."""
+    tags = {FOCAL_LENGTH: 35.0, X_RESOLUTION: resolution, RESOLUTION_UNIT: unit}
+    focal_px = focal_length_px(tags, 6000, 4000)
+    assert horizontal_view_deg(focal_px, 6000) == pytest.approx(54.4322, abs=PLACES)
+
+
+def test_the_reason_stands_in_the_note_and_in_the_question(tmp_path):
+    path = write(tmp_path / "photo.jpg", (60, 40), {FOCAL_LENGTH_35MM: 9000})
+    with pytest.raises(SceneError, match=r"angle of view \(the focal length.*ignored\); give the"):
+        Scene.load(path)
+    notes = Scene.load(path, horizontal_view_deg=60.0).notes
+    assert any("9000 mm in 35 mm film" in note for note in notes)

@@ -8,31 +8,20 @@ import imagecodecs
 import numpy as np
 import pytest
 import tifffile
+from photo_files import (
+    D65,
+    ORIENTATION,
+    SRGB_PRIMARIES,
+    STORED,
+    between,
+    light_of,
+    picture,
+    with_exif,
+)
 from PIL import Image, ImageCms
 
 from pinsim import Scene, SceneError
 from pinsim.scene.door import read_photo
-
-ORIENTATION = 0x0112
-D65 = (0.3127, 0.3290)
-SRGB_PRIMARIES = ((0.64, 0.33), (0.30, 0.60), (0.15, 0.06))
-# Linear Bradford cone responses, as ICC.1 (annex on chromatic adaptation) prints them; from memory.
-BRADFORD = np.array(
-    [[0.8951, 0.2664, -0.1614], [-0.7502, 1.7135, 0.0367], [0.0389, -0.0685, 1.0296]]
-)
-
-
-def light_of(codes, top=255):
-    """Return linear light of sRGB codes."""
-    v = np.asarray(codes, np.float64) / top
-    return np.where(v <= 0.04045, v / 12.92, ((v + 0.055) / 1.055) ** 2.4)
-
-
-def picture(rows=6, columns=8, channels=3, top=255, dtype=np.uint8):
-    """Return codes that differ everywhere, so that no turn or swap goes unseen."""
-    n = rows * columns * channels
-    spread = (np.arange(n) * 37 % n) / (n - 1)
-    return np.round(spread * top).astype(dtype).reshape(rows, columns, channels)
 
 
 def mode_of(path):
@@ -47,23 +36,6 @@ def check(path, expected, atol=1e-6):
     assert light.shape == expected.shape
     np.testing.assert_allclose(light, expected, rtol=0, atol=atol)
     return photo
-
-
-# Orientation n: how an upright picture must be stored so that viewers turn it back (Exif 2.32,
-# CIPA DC-008, from memory: 1 normal, 2 mirrored, 3 half turn, 4 upside down, 5 transposed,
-# 6 to be turned clockwise, 7 transverse, 8 to be turned anticlockwise). 0 and 9 mean nothing.
-STORED = {
-    0: lambda a: a,
-    1: lambda a: a,
-    2: np.fliplr,
-    3: lambda a: np.rot90(a, 2),
-    4: np.flipud,
-    5: lambda a: np.swapaxes(a, 0, 1),
-    6: lambda a: np.rot90(a, 1),
-    7: lambda a: np.swapaxes(np.rot90(a, 2), 0, 1),
-    8: lambda a: np.rot90(a, -1),
-    9: lambda a: a,
-}
 
 
 @pytest.mark.parametrize("kind", ["png", "png16", "tif", "tif grey", "tif16", "tif float"])
@@ -93,17 +65,6 @@ def test_eight_orientations_give_one_picture(tmp_path, kind, orientation):
     check(path, expected)
 
 
-def with_exif(png, exif):
-    """Return a PNG's bytes with an eXIf chunk before its pixels (PNG 3rd edition)."""
-    import struct
-    import zlib
-
-    body = b"eXIf" + exif.tobytes().removeprefix(b"Exif\0\0")
-    chunk = struct.pack(">I", len(body) - 4) + body + struct.pack(">I", zlib.crc32(body))
-    at = png.index(b"IDAT") - 4
-    return png[:at] + chunk + png[at:]
-
-
 @pytest.mark.parametrize("orientation", range(1, 9))
 def test_a_turned_jpeg_comes_upright(tmp_path, orientation):
     corner = np.zeros((32, 48, 3), np.uint8)
@@ -115,6 +76,34 @@ def test_a_turned_jpeg_comes_upright(tmp_path, orientation):
     image = Image.fromarray(np.ascontiguousarray(STORED[orientation](corner)))
     image.save(path, quality=100, subsampling=0, exif=exif)
     check(path, light_of(corner), atol=0.03)
+
+
+@pytest.mark.parametrize(
+    ("kind", "orientation"),
+    [
+        *((kind, n) for kind in ("jpg", "png", "tif", "tif16") for n in (0, 1, 8, 9, 65535)),
+        ("tif16", (6, 6)),
+    ],
+)
+def test_an_orientation_that_means_nothing_gets_a_word(tmp_path, kind, orientation):
+    """1 to 8 are defined (Exif 2.32); another number, or a list, leaves the photo as it is stored."""
+    path = tmp_path / f"photo.{kind[:3]}"
+    known = orientation in (1, 8)
+    codes = np.full((16, 24, 3), 128, np.uint8)
+    if kind.startswith("tif"):
+        several = orientation if isinstance(orientation, tuple) else (orientation,)
+        tag = [(ORIENTATION, "H", len(several), several if several[1:] else several[0], True)]
+        deep = codes.astype(np.uint16) * 257 if kind == "tif16" else codes
+        tifffile.imwrite(path, deep, photometric="rgb", extratags=tag)
+    else:
+        exif = Image.Exif()
+        exif[ORIENTATION] = orientation
+        Image.fromarray(codes).save(path, exif=exif)
+    photo = read_photo(path)
+    assert photo.shape == ((24, 16) if orientation == 8 else (16, 24))
+    told = f"is {orientation}" if isinstance(orientation, int) else "is no single number"
+    wanted = f"its orientation tag {told}, which means nothing (1 to 8 do); taken as upright"
+    assert photo.notes == (() if known else (wanted,))
 
 
 @pytest.mark.parametrize("orientation", [5, 6, 7, 8])
@@ -308,21 +297,6 @@ def test_16_bit_cmyk_is_not_taken_for_red_green_blue_and_alpha(tmp_path):
 # Colour profiles ------------------------------------------------------------------------------
 
 
-def to_xyz(primaries, white):
-    """Return the matrix from linear RGB to XYZ of three primaries and a white, all as (x, y)."""
-    columns = np.array([(x / y, 1.0, (1 - x - y) / y) for x, y in primaries]).T
-    x, y = white
-    return columns * np.linalg.solve(columns, np.array([x / y, 1.0, (1 - x - y) / y]))
-
-
-def between(primaries, white):
-    """Return the matrix from a space's linear RGB to linear sRGB, white adapted by Bradford."""
-    white_from, white_to = (np.array([x / y, 1.0, (1 - x - y) / y]) for x, y in (white, D65))
-    cones = np.diag((BRADFORD @ white_to) / (BRADFORD @ white_from))
-    adapt = np.linalg.inv(BRADFORD) @ cones @ BRADFORD
-    return np.linalg.inv(to_xyz(SRGB_PRIMARIES, D65)) @ adapt @ to_xyz(primaries, white)
-
-
 SPACES = {
     # name: primaries, white, power
     "wide gamut, power 1.8": (((0.70, 0.29), (0.20, 0.72), (0.14, 0.05)), D65, 1.8),
@@ -386,7 +360,7 @@ def test_the_name_srgb_in_a_profile_does_not_make_it_srgb(tmp_path):
 
 
 def test_an_srgb_profile_changes_not_one_value(tmp_path):
-    codes = picture()
+    codes = picture(top=250)
     path = tmp_path / "photo.png"
     srgb = ImageCms.ImageCmsProfile(ImageCms.createProfile("sRGB")).tobytes()
     Image.fromarray(codes).save(path, icc_profile=srgb)
@@ -408,7 +382,7 @@ def test_a_grey_photo_with_an_srgb_profile_is_read_as_srgb(tmp_path):
 def test_a_grey_profile_is_used(tmp_path, bits):
     profile = imagecodecs.cms_profile("gray", whitepoint=[*D65, 1.0], gamma=1.8)
     top = (1 << bits) - 1
-    grey = picture(channels=1, top=top, dtype=np.uint8 if bits == 8 else np.uint16)[..., 0]
+    grey = picture(channels=1, top=top - 5, dtype=np.uint8 if bits == 8 else np.uint16)[..., 0]
     path = tmp_path / "photo.tif"
     tifffile.imwrite(path, grey, photometric="minisblack", iccprofile=profile)
     expected = ((grey / top) ** 1.8)[..., None].repeat(3, 2)
@@ -418,7 +392,7 @@ def test_a_grey_profile_is_used(tmp_path, bits):
 @pytest.mark.parametrize("profile", [b"not a profile at all", bytes(200)])
 @pytest.mark.parametrize("channels", [1, 3])
 def test_a_broken_profile_is_said_and_the_photo_read_as_srgb(tmp_path, profile, channels):
-    codes = picture(channels=channels)
+    codes = picture(channels=channels, top=250)
     path = tmp_path / "photo.png"
     Image.fromarray(codes[..., 0] if channels == 1 else codes).save(path, icc_profile=profile)
     photo = check(path, np.broadcast_to(light_of(codes), (*codes.shape[:2], 3)))
@@ -426,7 +400,7 @@ def test_a_broken_profile_is_said_and_the_photo_read_as_srgb(tmp_path, profile, 
 
 
 def test_a_profile_cut_short_is_said_too(tmp_path):
-    codes = picture()
+    codes = picture(top=250)
     whole = profile_of(*SPACES["wide gamut, power 1.8"])
     path = tmp_path / "photo.png"
     Image.fromarray(codes).save(path, icc_profile=whole[: len(whole) // 2])

@@ -4,43 +4,79 @@ A Photo keeps the file's own codes and turns them to linear light rows at a time
 photo is 72 MB of codes but 288 MB of light, and most designs need no more than a part of it.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.errors import SceneError
+from pinsim.scene.gamut import bring_in
+from pinsim.scene.highlights import LIFT_HINT, HighlightLift, plan_lift, require_lift
+from pinsim.scene.panorama import PanoramaPlace
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Photo:
     """An upright photo whose light can be asked for.
 
-    codes : (rows, columns, 3) uint8, uint16 or float32. decode : linear light for each code,
-    float32, or None when the codes are linear light already. view_deg : the horizontal angle of
-    view that the file itself tells, if it does. notes : what was decided at the door, for people.
+    codes : (rows, columns, 3) uint8, uint16, float16 or float32. decode : linear light for each code,
+    float32, (codes,) or one row for each channel, or None when the codes are linear light already.
+    to_srgb : (3, 3) from the decoded channels to linear sRGB, or None when they are that.
+    view_deg : the horizontal angle of view that the file itself tells, if it does; view_note : why
+    what it tells cannot be used. notes : what was decided at the door, for people.
+    clips : whether the file had a highest code, so that what was brighter than it is lost.
+    true_shape : rows and columns of the file's picture, when the photo was read smaller.
+    lift : what brightens clipped parts, if that was asked for.
+    panorama : where the file says it lies on the sphere, if it says it is a panorama.
     """
 
     codes: NDArray[Any]
     decode: NDArray[np.float32] | None = None
+    to_srgb: NDArray[np.float32] | None = None
     view_deg: float | None = None
+    view_note: str = ""
     notes: tuple[str, ...] = ()
+    clips: bool = False
+    true_shape: tuple[int, int] | None = None
+    lift: HighlightLift | None = None
+    panorama: PanoramaPlace | None = None
 
     @property
     def shape(self) -> tuple[int, int]:
         """Rows and columns."""
         return self.codes.shape[0], self.codes.shape[1]
 
+    @property
+    def full_shape(self) -> tuple[int, int]:
+        """Rows and columns of the file's own picture, upright, whatever size was read."""
+        return self.true_shape or self.shape
+
     def linear(
         self, rows: slice = slice(None), columns: slice = slice(None)
     ) -> NDArray[np.float32]:
-        """Return linear light, float32 (rows, columns, 3), 1.0 = the photo's white."""
+        """Return linear light of sRGB primaries, float32 (rows, columns, 3), 1.0 = white."""
+        light = self.decoded(rows, columns)
+        if self.to_srgb is not None:
+            light = bring_in(light @ self.to_srgb.T)
+        if self.lift is not None:
+            light = self.lift.brightened(light, rows, columns)
+        return light
+
+    def decoded(
+        self, rows: slice = slice(None), columns: slice = slice(None)
+    ) -> NDArray[np.float32]:
+        """Return linear light in the file's own primaries, float32 (rows, columns, 3)."""
         part = self.codes[rows, columns]
         if self.decode is None:
             return np.asarray(part, np.float32)
         # mode="clip" spares numpy a checked copy; no code can be out of range.
-        return np.take(self.decode, part, mode="clip")
+        if self.decode.ndim == 1:
+            return np.take(self.decode, part, mode="clip")
+        light = np.empty(part.shape, np.float32)
+        for channel, table in enumerate(self.decode):
+            light[..., channel] = np.take(table, part[..., channel], mode="clip")
+        return light
 
 
 def photo_from_linear(light: NDArray[Any], *, view_deg: float | None = None) -> Photo:
@@ -61,15 +97,37 @@ def photo_from_linear(light: NDArray[Any], *, view_deg: float | None = None) -> 
     return Photo(codes=sound_light(np.array(light, np.float32), "the light"), view_deg=view_deg)
 
 
-def sound_light(light: NDArray[np.float32], where: str) -> NDArray[np.float32]:
-    """Return the light read-only; refuse what cannot be light."""
+def lifted(photo: Photo, stops: float, *, around: bool = False) -> Photo:
+    """Return the photo with its clipped white brightened by up to `stops`; this light is invented.
+
+    around : the photo's left edge goes on at its right. See highlights.py for what is assumed.
+    """
+    if require_lift(stops, "highlight lift") == 0.0:
+        return photo
+    lift = None
+    if photo.clips:
+        lift = plan_lift(photo.linear, photo.shape, stops=stops, around=around)
+    if lift is None:
+        why = "no white in it is clipped" if photo.clips else "it holds its light unclipped"
+        return replace(photo, notes=(*photo.notes, f"highlight lift changes nothing: {why}"))
+    notes = [note for note in photo.notes if LIFT_HINT not in note]
+    share = 100.0 * float((lift.stops > 0.0).mean())
+    notes.append(
+        f"clipped white, {max(share, 0.1):.1f} % of the photo, is brightened by up to {stops:g} stops "
+        "(highlight lift); this light is invented"
+    )
+    return replace(photo, lift=lift, notes=tuple(notes))
+
+
+def sound_light(light: NDArray[Any], where: str) -> NDArray[Any]:
+    """Return the light, of any float type, read-only; refuse what cannot be light."""
     wrong = int(np.count_nonzero(~np.isfinite(light)))
     if wrong:
         raise SceneError(f"{where} holds {wrong} values that are NaN or infinite; fill them first.")
-    lowest = float(light.min())
-    if lowest < 0.0:
+    least = float(light.min())
+    if least < 0.0:
         raise SceneError(
-            f"{where} holds negative light, down to {lowest:g}; linear light starts at 0."
+            f"{where} holds negative light, down to {least:g}; linear light starts at 0."
         )
     light.flags.writeable = False
     return light
