@@ -10,7 +10,9 @@ from numpy.typing import NDArray
 
 from pinsim import files
 from pinsim.camera import Camera
-from pinsim.render.develop import LOOK_TEXT, Look, develop, turn
+from pinsim.render.develop import LOOK_TEXT, Look, develop, develop_material, turn
+from pinsim.render.expose import Exposed
+from pinsim.units import format_time
 
 Float = NDArray[np.float32]
 
@@ -22,7 +24,9 @@ class Picture:
     exposure : float32 (rows, columns, channels), linear, upright as the scene; 1.0 = an evenly lit
     white scene at the film's axis; NaN where the photo does not cover the frame.
     pitch_mm : film mm per pixel; the array's middle is the middle of the film frame.
-    gain : exposure given over the metered exposure. notes : what a builder should know of it.
+    gain : time given over the time needed. exposed : how the material was exposed, if a time was given;
+    without it tones are the photo's. grain_seed : draws the material's grain, the same each time.
+    notes : what a builder should know of it.
     """
 
     exposure: Float
@@ -31,6 +35,8 @@ class Picture:
     scene_name: str
     look: Look = "upright"
     gain: float = 1.0
+    exposed: Exposed | None = None
+    grain_seed: int | None = None
     covered_share: float = 1.0
     notes: tuple[str, ...] = ()
 
@@ -39,13 +45,31 @@ class Picture:
         """One line that says what the picture is and from where it is looked at."""
         return (
             f"pinsim: {self.scene_name} through {self.camera.name} ({self.camera.summary}); "
-            f"{self.camera.tone}, {LOOK_TEXT[self.look]}"
+            f"{self.camera.tone}, {LOOK_TEXT[self.look]}{self._given}"
         )
+
+    @property
+    def _given(self) -> str:
+        if self.exposed is None:
+            return ""
+        return f"; {format_time(self.exposed.time_s)} at EV {self.exposed.ev:g}"
 
     def codes(self, bits: int = 8) -> NDArray[Any]:
         """Return sRGB codes, uint8 or uint16 (rows, columns, channels), turned as `look` says."""
-        upright = develop(self.exposure, gain=self.gain, tone=self.camera.tone, bits=bits)
-        return np.ascontiguousarray(turn(upright, self.look))
+        return np.ascontiguousarray(turn(self.develop(self.exposure, bits=bits), self.look))
+
+    def develop(self, exposure: Float, *, bits: int = 8) -> NDArray[Any]:
+        """Return upright sRGB codes of another exposure of this very film, such as a part of it."""
+        if self.exposed is None:
+            return develop(exposure, gain=self.gain, tone=self.camera.tone, bits=bits)
+        return develop_material(
+            exposure,
+            exposed=self.exposed,
+            tone=self.camera.tone,
+            bits=bits,
+            pitch_mm=self.pitch_mm,
+            rng=None if self.grain_seed is None else np.random.default_rng(self.grain_seed),
+        )
 
     def looked_at(self, look: Look) -> "Picture":
         """Return the same film looked at from elsewhere."""
