@@ -4,6 +4,7 @@ Absolute times of a shared machine mean little; each figure stands beside what i
 against, the two timed in turn, and the median of the pairs is printed with its range.
 """
 
+import math
 import os
 
 os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # as the command line sets it
@@ -100,7 +101,7 @@ def whole_preview(folder: Path) -> None:
                     "-m", "pinsim", *a, "-o", str(o), "--overwrite"
                 ),
                 lambda w=width, t=theirs: process("-c", PLAIN_SHRINK, str(photo), str(w), str(t)),
-                "at most 1.5",
+                "at most 1.0",
             )
 
 
@@ -121,7 +122,7 @@ def varying_kernel() -> None:
     from pinsim.camera import Camera, Film, Hole
     from pinsim.render import kernels
     from pinsim.render.illuminate import illuminate
-    from pinsim.render.plan import make_plan
+    from pinsim.render.plan import make_plan, plan_for
     from pinsim.render.project import project
     from pinsim.render.spread import spread
     from pinsim.scene import Scene
@@ -148,7 +149,8 @@ def varying_kernel() -> None:
     ratio("varying kernel, three channels", lambda: spread(view), plain, "at most 8")
 
     def prepare() -> None:
-        kernels._prepared.cache_clear()
+        kernels.prepared.cache_clear()
+        plan_for.cache_clear()
         make_plan(scene, camera)
 
     ratio("preparing its kernels", prepare, plain, "at most 8, once for each design")
@@ -166,12 +168,130 @@ def varying_kernel() -> None:
     )
 
 
+def material_tones() -> None:
+    """What the material adds to a preview, in one process: developing against the whole."""
+    from dataclasses import replace
+
+    from pinsim.camera import Camera
+    from pinsim.render.develop import develop, develop_material
+    from pinsim.render.expose import expose
+    from pinsim.render.kept import forget
+    from pinsim.render.preview import preview
+    from pinsim.scene import Scene
+
+    scene = Scene.load("sample:courtyard")
+    box = Camera.load("sample:square-box")
+    for name in ("colour-negative", "panchromatic-100"):
+        camera = replace(box, material_name=name)
+        exposed = expose(camera, time_s=3.0, ev=14.0)
+        exposure = preview(scene, camera, width_px=1400).exposure
+        ratio(
+            f"material's tones of {exposure.shape}, {name}, of the whole preview",
+            lambda e=exposure, x=exposed: develop_material(e, exposed=x),
+            lambda c=camera: (forget(), preview(scene, c, width_px=1400).codes()),
+            "at most 0.2",
+        )
+        ratio(
+            "the same with grain, against tones without a material",
+            lambda e=exposure, x=exposed: develop_material(
+                e, exposed=x, pitch_mm=0.04, rng=np.random.default_rng(1)
+            ),
+            lambda e=exposure: develop(e),
+            "nothing: only when asked for",
+        )
+
+
+def second_look() -> None:
+    """The same photo and box with another hole, in one session, beside the first look."""
+    from dataclasses import replace
+
+    from pinsim.camera import Camera, Film, Hole
+    from pinsim.render.kept import forget
+    from pinsim.render.kernels import _family, prepared
+    from pinsim.render.plan import plan_for
+    from pinsim.render.preview import preview
+    from pinsim.scene import Scene
+
+    scene = Scene.load("sample:courtyard", distance_mm=10_000.0)
+    box = Camera(
+        focal_length_mm=60.0, hole=Hole(diameter_mm=0.3), film=Film(width_mm=56.0, height_mm=56.0)
+    )
+    small = Camera(
+        focal_length_mm=46.0, hole=Hole(diameter_mm=0.25), film=Film(width_mm=36.0, height_mm=24.0)
+    )
+    for name, camera, width_px in (("6x6", box, 1000), ("36x24", small, 1225)):
+        first, second = [], []
+        for turn in range(RUNS):
+            forget(), prepared.cache_clear(), _family.cache_clear(), plan_for.cache_clear()
+            first.append(
+                timed(lambda c=camera, w=width_px: preview(scene, c, width_px=w, averaged=True))
+            )
+            other = replace(
+                camera, hole=Hole(diameter_mm=camera.hole.diameter_mm + 0.01 * (turn + 1))
+            )
+            second.append(
+                timed(lambda c=other, w=width_px: preview(scene, c, width_px=w, averaged=True))
+            )
+        print(
+            f"second look, only the hole changed, one megapixel of {name}: "
+            f"{1000 * statistics.median(second):.0f} ms ({1000 * min(second):.0f} to "
+            f"{1000 * max(second):.0f}), the first {1000 * statistics.median(first):.0f} ms; "
+            "asked: under 100 ms on two cores"
+        )
+
+
+def twelve_layers(folder: Path) -> None:
+    """A 24-megapixel photo with a distance map, beside the way it is done by hand.
+
+    By hand: twelve layers of the photo at its full size, each colour convolved with its layer's disc
+    by scipy.signal.fftconvolve. One layer is timed, and counted twelve times.
+    """
+    from scipy import signal
+
+    from pinsim.camera import Camera
+    from pinsim.samples import names
+    from pinsim.scene import Scene
+
+    photo = folder / "table.jpg"
+    sample = names("scene")["tabletop"].parent
+    Image.open(sample / "photo.jpg").resize((6000, 4000), Image.Resampling.BICUBIC).save(photo)
+    distance = Image.open(sample / "distance.png")
+    distance.resize((6000, 4000), Image.Resampling.NEAREST).save(folder / "table.png")
+    text = (sample / "scene.toml").read_text().replace("photo.jpg", "table.jpg")
+    (folder / "table.toml").write_text(text.replace("distance.png", "table.png"))
+    scene = Scene.load(folder / "table.toml")
+    camera = Camera.load("sample:square-box")
+    light = scene.photo.linear()
+    disc_px = 1.2 * camera.hole.diameter_mm / camera.focal_length_mm * scene.focal_length_px
+    axis = np.arange(-math.ceil(disc_px), math.ceil(disc_px) + 1)
+    kernel = (np.hypot(axis[:, None], axis) < 0.5 * disc_px).astype(np.float64)
+
+    def layer() -> None:
+        for colour in range(3):
+            signal.fftconvolve(light[..., colour].astype(np.float64), kernel, mode="same")
+
+    arguments = ("preview", str(folder / "table.toml"), "sample:square-box", "--overwrite")
+    ours = [
+        timed(lambda: process("-m", "pinsim", *arguments, "-o", str(folder / "table-out.png")))
+        for _ in range(3)
+    ]
+    by_hand = 12.0 * statistics.median(timed(layer) for _ in range(2))
+    print(
+        f"24 megapixels with a distance map, the whole command: {statistics.median(ours):.1f} s; "
+        f"twelve layers by hand {by_hand:.0f} s: {by_hand / statistics.median(ours):.0f} times faster; "
+        "asked: at least 20"
+    )
+
+
 def main() -> None:
+    material_tones()
+    second_look()
     transfer_functions()
     start_up()
     varying_kernel()
     with tempfile.TemporaryDirectory() as folder:
         whole_preview(Path(folder))
+        twelve_layers(Path(folder))
 
 
 if __name__ == "__main__":

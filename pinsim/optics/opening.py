@@ -38,6 +38,9 @@ class Opening(Protocol):
     def mirrored(self) -> bool:
         """Whether left and right, and up and down, are mirror images: then the OTF is real."""
 
+    def eyes_mm(self, count: int) -> Array:
+        """Return about `count` points (n, 2), right and up, spread evenly over the opening."""
+
     def clear_share(self, plate_shift_mm: Array) -> Array:
         """Return |A and A shifted| / |A| for shifts (..., 2): what a thick plate lets through."""
 
@@ -62,6 +65,10 @@ class Ellipse:
         """An ellipse on the axes is its own mirror image."""
         return True
 
+    def eyes_mm(self, count: int) -> Array:
+        """Return points (count, 2) in a sunflower's order (Vogel, Math. Biosci. 44 (1979) 179)."""
+        return np.asarray(sunflower(count) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm]))
+
     def _on_unit_disc(self, vectors: Array) -> Array:
         return np.asarray(vectors / np.array([0.5 * self.right_mm, 0.5 * self.up_mm]))
 
@@ -74,6 +81,13 @@ class Ellipse:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
         wave = (shift_mm @ curvature.T) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm])
         return disc_overlap(self._on_unit_disc(shift_mm), wave, self._on_unit_disc(plate_shift_mm))
+
+
+def sunflower(count: int) -> Array:
+    """Return points (count, 2) spread evenly over the unit disc, the innermost first."""
+    number = np.arange(count) + 0.5
+    radius, angle = np.sqrt(number / count), number * (math.pi * (3.0 - math.sqrt(5.0)))
+    return np.stack([radius * np.cos(angle), radius * np.sin(angle)], axis=-1)
 
 
 def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
@@ -189,6 +203,14 @@ class Slit:
     def mirrored(self) -> bool:
         """A rectangle on the axes is its own mirror image."""
         return True
+
+    def eyes_mm(self, count: int) -> Array:
+        """Return points (n, 2) on a grid of nearly square cells."""
+        across = max(1, round(math.sqrt(count * self.right_mm / self.up_mm)))
+        down = max(1, round(count / across))
+        right = ((np.arange(across) + 0.5) / across - 0.5) * self.right_mm
+        up = ((np.arange(down) + 0.5) / down - 0.5) * self.up_mm
+        return np.stack(np.meshgrid(right, up), axis=-1).reshape(-1, 2)
 
     def _sides(self, apart: Array) -> Array:
         sides = np.array([self.right_mm, self.up_mm]) - np.abs(apart)

@@ -6,6 +6,8 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from pinsim.optics.opening import sunflower
+
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
 
@@ -87,6 +89,17 @@ class Traced:
     def area_mm2(self) -> float:
         """The open area."""
         return float(self.clear.sum()) * self.cell_mm**2
+
+    def eyes_mm(self, count: int) -> Array:
+        """Return about `count` points (n, 2), right and up: those of a denser disc that are open."""
+        half = 0.5 * len(self.clear) * self.cell_mm
+        # The grid's square within a circle, and only the open part of it.
+        share = float(self.clear.mean()) * 2.0 / math.pi
+        points = sunflower(math.ceil(count / max(share, 1e-6))) * (half * math.sqrt(2.0))
+        points = points[(np.abs(points) < half).all(axis=1)]
+        column = ((points[:, 0] + half) / self.cell_mm).astype(np.intp)
+        row = ((half - points[:, 1]) / self.cell_mm).astype(np.intp)
+        return np.asarray(points[self.clear[row, column] >= 0.5])
 
     def coarser(self, cells: int) -> "Traced":
         """Return the opening on a grid of at least `cells` across it, at most twice as many.

@@ -4,18 +4,22 @@ Weighting comes before spreading: it is the light of each scene point that is di
 slant through the hole, and that light is then scattered over the film.
 """
 
+import math
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.camera import Camera
+from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
 
 Array = NDArray[np.float64]
 
 _THREADS = 2
+_TABLE = 1 << 16  # steps along a radius: reading the nearest errs by less than 1e-4
 _STRIP = 64  # film rows at once: they stay in the processor's cache
 
 
@@ -25,7 +29,28 @@ def falloff(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32
     right_mm : (columns,), up_mm : (rows,). Returns float32 (rows, columns): 1 on the axis, 0 where
     the plate's bore shuts the light out or the film does not see the hole.
     """
-    light, right, up = camera.surface.light(right_mm[None, :], up_mm[:, None])
+    if camera.surface.flat and camera.hole.shape == "round":
+        radius = np.hypot(right_mm[None, :].astype(np.float32), up_mm[:, None].astype(np.float32))
+        return _around_axis(camera, radius)
+    return _anywhere(camera, right_mm[None, :], up_mm[:, None])
+
+
+def _around_axis(camera: Camera, radius_mm: NDArray[np.float32]) -> NDArray[np.float32]:
+    """Return the falloff of a round hole before flat film, which depends on the radius only."""
+    table = _table(camera, float(2.0 ** math.ceil(math.log2(1.0 + float(radius_mm.max())))))
+    radius_mm *= np.float32((_TABLE - 1) / table[0])
+    return np.take(table[1], radius_mm.astype(np.int32))
+
+
+@lru_cache(maxsize=4)
+def _table(camera: Camera, end_mm: float) -> tuple[float, NDArray[np.float32]]:
+    """Return the end and, at the middles of even steps to it, the falloff along a radius."""
+    radius = (np.arange(_TABLE) + 0.5) * (end_mm / (_TABLE - 1))
+    return end_mm, _anywhere(camera, np.asarray(radius, np.float64), np.zeros(1))
+
+
+def _anywhere(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32]:
+    light, right, up = camera.surface.light(right_mm, up_mm)
     thickness = camera.plate_thickness_mm
     if thickness > 0.0:
         apart = np.stack(np.broadcast_arrays(thickness * right, thickness * up), axis=-1)
@@ -33,8 +58,23 @@ def falloff(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32
     return light.astype(np.float32)
 
 
+def own_shade(plan: RenderPlan) -> NDArray[np.float32] | None:
+    """Return what the plate leaves through the hole itself over what it leaves through its family's.
+
+    float32 (rows, columns) on the padded grid; None where that is 1 everywhere. So smooth and so near
+    to 1 that it is the same before spreading and after.
+    """
+    if plan.family is None or plan.camera.plate_thickness_mm == 0.0:
+        return None
+    both = (falloff(camera, plan.right_mm(), plan.up_mm()) for camera in (plan.camera, plan.family))
+    own, common = both
+    return np.divide(own, common, out=own, where=common > 0.0)
+
+
 def illuminate(view: FilmView) -> FilmView:
     """Return the view with its light dimmed by falloff; 1 stays 1 on the hole's axis.
+
+    The plate's shade is that of the hole's family; `own_shade` tells what is left to do.
 
     The view's own light is dimmed in place, as nothing needs the radiance any more: a second copy
     would be the largest thing in memory.
@@ -43,9 +83,11 @@ def illuminate(view: FilmView) -> FilmView:
     right_mm, up_mm = plan.right_mm(), plan.up_mm()
     inside_rows, inside_columns = plan.inside
 
+    camera = plan.camera if plan.family is None else plan.family
+
     def dim(start: int) -> int:
         rows = slice(start, min(start + _STRIP, up_mm.size))
-        share = falloff(plan.camera, right_mm, up_mm[rows])
+        share = falloff(camera, right_mm, up_mm[rows])
         for channel in range(view.light.shape[2]):
             view.light[rows, :, channel] *= share
         framed = (np.arange(rows.start, rows.stop) >= inside_rows.start) & (

@@ -22,7 +22,7 @@ from numpy.typing import NDArray
 
 from pinsim.camera import Camera
 from pinsim.material import Channel
-from pinsim.optics import ChiefRays, Ellipse, Light
+from pinsim.optics import ChiefRays, Light
 from pinsim.optics.sharpness import light_ray_otf
 
 Array = NDArray[np.float64]
@@ -34,11 +34,16 @@ PICTURE_RMS = 3e-4
 SINGLE_OTF = 1e-2
 SCENE_VARIANCE = 0.04
 MOST_MODES = 48
+# Kernels that others are made like carry this many modes more than their own hole needs.
+SPARE_MODES = 4
+# Tangent of the slant beyond which kernels are so far from round that more directions are sampled.
+STEEP = 0.8
 # Directions of film frequency over half a turn; a multiple of four, so that mirror images and
 # turned copies of a kernel fall on the same directions.
 DIRECTIONS = 16
 # Wavelengths in the variation over the film; the mean has all of the band's own.
-FEW_WAVELENGTHS = 4
+FEW_WAVELENGTHS = 3
+ROUGH_WAVELENGTHS = 2
 # A film point that sees less of the hole than this through a thick plate has the kernel of a point
 # nearer to the axis: next to nothing is drawn there, by a sliver that no quadrature resolves.
 LEAST_CLEAR = 0.03
@@ -46,6 +51,7 @@ LEAST_CLEAR = 0.03
 # Cells across a traced hole while kernels are sampled.
 TRACED_CELLS = 72
 
+_AROUND = 12 * DIRECTIONS  # fine directions over a full turn
 _COUNTS = (0, 1, 2, 3, 4, 5, 6, 8, 10, 12, 15, 19, 24, 30, 38)
 _THREADS = 2
 
@@ -85,6 +91,8 @@ class Kernels:
     radii : (n,), Chebyshev-Lobatto nodes of |nu| from 0 to the end, cycles/mm. fields : (modes, u, v,
     m), Chebyshev coefficients over the range, common to all bands. errors : (modes + 1, 2), what
     the first 0, 1, ... modes leave in any band: rms of a picture, and of any single frequency.
+    at_nodes : (modes, nodes), the fields' values where kernels are sampled. like : the kernels whose
+    fields these are, the first of them, if they are another's.
     """
 
     range: FilmRange
@@ -92,6 +100,8 @@ class Kernels:
     bands: tuple[BandKernels, ...]
     fields: Array
     errors: Array
+    at_nodes: Array
+    like: "Kernels | None" = None
 
     def modes_for(self, picture_rms: float, single_otf: float) -> int:
         """Return how many modes keep both errors within bounds; all of them if none do."""
@@ -133,20 +143,40 @@ class _Sampler:
     """Evaluates transfer functions at film points on the polar grid of frequencies."""
 
     def __init__(self, camera: Camera, radii: Array, light: Light) -> None:
-        angle = np.pi * np.arange(DIRECTIONS) / DIRECTIONS
-        directions = np.stack([np.cos(angle), np.sin(angle)], axis=-1)
-        self._frequency = (radii[:, None, None] * directions).reshape(-1, 2)
-        self._shape = (radii.size, DIRECTIONS)
+        self.focal_length_mm = camera.focal_length_mm
+        self._frequency: dict[int, Array] = {}
+        self._radii = radii
         self._camera = camera
         self._light = light
 
-    def at(self, u_mm: float, v_mm: float, scale: float, light: Light | None = None) -> Values:
-        """Return (radii, directions) at a film point, for objects at m = scale."""
+    def _grid(self, directions: int, over: float) -> Array:
+        if directions not in self._frequency:
+            angle = over * np.arange(directions)
+            unit = np.stack([np.cos(angle), np.sin(angle)], axis=-1)
+            self._frequency[directions] = (self._radii[:, None, None] * unit).reshape(-1, 2)
+        return self._frequency[directions]
+
+    def at(
+        self,
+        u_mm: float,
+        v_mm: float,
+        scale: float,
+        light: Light | None = None,
+        quarter: int | None = None,
+    ) -> Values:
+        """Return (radii, directions) at a film point, for objects at m = scale.
+
+        quarter : instead of half a turn, directions from +u to +v, both included, this many steps.
+        """
         camera = self._camera
+        directions = DIRECTIONS if quarter is None else quarter + 1
+        frequency = self._grid(
+            directions, np.pi / DIRECTIONS if quarter is None else 0.5 * np.pi / max(quarter, 1)
+        )
         rays = _clear_rays(camera, u_mm, v_mm)
         distance = math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0)
         values = light_ray_otf(
-            self._frequency,
+            frequency,
             rays=rays,
             opening=camera.opening,
             plate_thickness_mm=camera.plate_thickness_mm,
@@ -154,7 +184,7 @@ class _Sampler:
             distance_mm=distance,
         )
         table: Values = values.real if camera.opening.mirrored else values
-        return table.reshape(self._shape)
+        return table.reshape(self._radii.size, directions)
 
 
 def _clear_rays(camera: Camera, u_mm: float, v_mm: float) -> ChiefRays:
@@ -170,9 +200,20 @@ def _clear_rays(camera: Camera, u_mm: float, v_mm: float) -> ChiefRays:
 
 
 def prepare(
-    camera: Camera, channels: tuple[Channel, ...], film_range: FilmRange, top_frequency: float
+    camera: Camera,
+    channels: tuple[Channel, ...],
+    film_range: FilmRange,
+    top_frequency: float,
+    *,
+    like: Kernels | None = None,
+    rough: bool = False,
 ) -> Kernels:
-    """Return the kernels of a design. top_frequency : the end of every band, cycles/mm."""
+    """Return the kernels of a design. top_frequency : the end of every band, cycles/mm.
+
+    like : kernels of another hole over the same range, whose fields are taken if they serve as well:
+    then all that is weighted by them serves this hole too. rough : only the fields matter, to others
+    that are made like these; they carry SPARE_MODES more than this hole needs.
+    """
     camera = _lighter(camera)
     z = camera.focal_length_mm
     u, v = film_range.u_mm, film_range.v_mm
@@ -190,6 +231,8 @@ def prepare(
     # Six samples to each turn of the shadow's own phase, and the rest for the shape of the curve.
     turns = top_frequency * camera.hole.greatest_mm * high
     count = 40 + math.ceil(6.0 * turns)
+    if rough:
+        count //= 2
     radii = 0.5 * top_frequency * (1.0 - np.cos(np.pi * np.arange(count) / (count - 1)))
     jobs = [
         (number, band, float(weights.sum()), channel.wavelengths_nm, weights / weights.sum())
@@ -199,12 +242,20 @@ def prepare(
     ]
     lights = [Light(wavelengths_nm=job[3], shares=job[4]) for job in jobs]
     with ThreadPoolExecutor(_THREADS) as pool:
-        sampled = list(pool.map(lambda light: _sampled(camera, nodes, radii, light), lights))
+        few = ROUGH_WAVELENGTHS if rough else FEW_WAVELENGTHS
+        sampled = list(pool.map(lambda light: _sampled(camera, nodes, radii, light, few), lights))
     frame_mm = max(u[1] - u[0], v[1] - v[0], 0.1 * z)
     grid = (radii.size, DIRECTIONS)
     middles = [samples.mean(axis=0) for samples, _ in sampled]
     apart = [samples - middle for (samples, _), middle in zip(sampled, middles, strict=True)]
-    modes, fields, errors = _decompose(apart, radii, frame_mm)
+    stack = _Stack(apart, radii, frame_mm)
+    if like is not None:
+        at_nodes, errors = stack.along(like.at_nodes)
+        if (errors[-1] > [PICTURE_RMS, SINGLE_OTF]).any():
+            like = None
+    if like is None:
+        at_nodes, errors = stack.along(stack.best_fields(), spare=SPARE_MODES if rough else 0)
+    modes = stack.modes(at_nodes)
     bands = tuple(
         BandKernels(
             channel=job[0],
@@ -215,32 +266,41 @@ def prepare(
         )
         for job, middle, (_, missing), own in zip(jobs, middles, sampled, modes, strict=True)
     )
-    values = fields.reshape(-1, *(axis.size for axis in nodes))
+    values = at_nodes.reshape(-1, *(axis.size for axis in nodes))
     return Kernels(
-        range=film_range, radii=radii, bands=bands, fields=_coefficients(values), errors=errors
+        range=film_range,
+        radii=radii,
+        bands=bands,
+        fields=_coefficients(values) if like is None else like.fields[: len(at_nodes)],
+        errors=errors,
+        at_nodes=at_nodes,
+        like=like,
     )
 
 
 def _sampled(
-    camera: Camera, nodes: tuple[Array, Array, Array], radii: Array, light: Light
+    camera: Camera, nodes: tuple[Array, Array, Array], radii: Array, light: Light, few: int
 ) -> tuple[Values, Values]:
     """Return samples (points, frequencies) for few wavelengths, and what these leave out."""
-    sampler = _Sampler(camera, radii, light.condensed(FEW_WAVELENGTHS))
+    sampler = _Sampler(camera, radii, light.condensed(few))
     samples = _samples(camera, nodes, sampler)
-    # The point nearest to the axis tells what the few wavelengths leave out.
+    # The point nearest to the axis tells what the few wavelengths leave out. On the axis all
+    # directions of a round hole are alike.
     near_u, near_v = (float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])
-    scale = float(nodes[2][-1])
-    missing = sampler.at(near_u, near_v, scale, light=light) - sampler.at(near_u, near_v, scale)
+    scale, quarter = float(nodes[2][-1]), None
+    if _round_on_flat(camera):
+        near_u, near_v, quarter = 0.0, 0.0, 0
+    missing = sampler.at(near_u, near_v, scale, light=light, quarter=quarter) - sampler.at(
+        near_u, near_v, scale, quarter=quarter
+    )
     return samples.reshape(-1, radii.size * DIRECTIONS), missing
 
 
 def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
     """Return transfer functions at all nodes, (u, v, m, radii, directions), mirror images shared."""
-    mirrored = camera.opening.mirrored
     opening = camera.opening
-    round_on_flat = (
-        isinstance(opening, Ellipse) and opening.right_mm == opening.up_mm and camera.surface.flat
-    )
+    if _round_on_flat(camera):
+        return _turned_samples(nodes, sampler)
     seen: dict[tuple[float, float, float], Values] = {}
 
     def at(u: float, v: float, m: float) -> Values:
@@ -253,59 +313,110 @@ def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sample
     for u in nodes[0]:
         for v in nodes[1]:
             for m in nodes[2]:
-                if not mirrored:
+                if not opening.mirrored:
                     result.append(at(float(u), float(v), float(m)))
                     continue
                 # Directions of this point's frequencies, as seen from the point whose kernel serves.
                 source = turned if u * v >= 0.0 else -turned
-                first, second = abs(float(u)), abs(float(v))
-                if round_on_flat and first < second:
-                    first, second = second, first
-                    source = DIRECTIONS // 2 - source
-                result.append(at(first, second, float(m))[:, source % DIRECTIONS])
+                result.append(at(abs(float(u)), abs(float(v)), float(m))[:, source % DIRECTIONS])
     return np.stack(result).reshape(*(axis.size for axis in nodes), *result[0].shape)
 
 
-def _decompose(
-    bands: list[Values], radii: Array, frame_mm: float
-) -> tuple[list[Values], Array, Array]:
-    """Return each band's modes, the fields (modes, points) they share, and the errors left.
+def _round_on_flat(camera: Camera) -> bool:
+    return camera.hole.shape == "round" and camera.surface.flat
 
-    bands : (points, frequencies) each. errors as in Kernels. Bands, and real and imaginary parts,
-    stand side by side, so fields are real and common.
+
+def _turned_samples(nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
+    """Return the samples of a round hole before flat film, all from a few points of one radius.
+
+    What such a hole draws depends on the distance from the axis and, turned with the point, on
+    direction: a polynomial along the radius and a Fourier series of cos 2k(angle) say it all.
     """
-    weight = np.repeat(_scene_power(radii, frame_mm), DIRECTIONS)
-    weight = np.sqrt(weight * SCENE_VARIANCE / weight.sum())
-    weight = np.maximum(weight, 1e-9 * weight.max())
-    imaginary = any(np.iscomplexobj(samples) for samples in bands)
-    parts = [
-        p for samples in bands for p in ((samples.real, samples.imag) if imaginary else (samples,))
-    ]
-    stacked = np.concatenate([part * weight for part in parts], axis=1)
-    # Eigenvectors of the points' covariance: there are far fewer points than frequencies.
-    _, vectors = np.linalg.eigh(stacked @ stacked.T)
-    vectors = vectors[:, ::-1]
-    rest = stacked.copy()
-    per_band = len(parts) // len(bands) * weight.size
-    errors = np.full((min(MOST_MODES, vectors.shape[1]) + 1, 2), np.inf)
-    done = 0
-    # Looked at in growing steps: each look costs as much as taking many modes away.
-    for count in (*(step for step in _COUNTS if step < len(errors)), len(errors) - 1):
-        some = vectors[:, done:count]
-        rest -= some @ (some.T @ rest)
-        done = count
-        power = (rest * rest).reshape(len(rest), len(bands), per_band).sum(axis=2)
-        single = np.abs(rest.reshape(len(rest), -1, weight.size) / weight).max()
-        errors[count] = math.sqrt(float(power.max())), float(single)
-        if errors[count, 0] <= PICTURE_RMS and errors[count, 1] <= SINGLE_OTF:
-            break
-    errors = errors[: done + 1]
-    chosen = vectors[:, :done]
-    flat = (chosen.T @ stacked).reshape(chosen.shape[1], len(parts), weight.size) / weight
-    modes: list[Values] = [flat[:, k] for k in range(len(parts))]
-    if imaginary:
-        modes = [modes[2 * k] + 1j * modes[2 * k + 1] for k in range(len(bands))]
-    return modes, chosen.T, errors
+    u, v = (part.ravel() for part in np.meshgrid(nodes[0], nodes[1], indexing="ij"))
+    distance, azimuth = np.hypot(u, v), np.arctan2(v, u)
+    farthest = float(distance.max())
+    # An even polynomial over the whole diagonal; a thick plate's shade has a cusp on the axis.
+    count = 1 if farthest == 0.0 else 1 + (4 * max(nodes[0].size, nodes[1].size)) // 5
+    places = chebyshev_nodes(2 * count, -farthest, farthest)[:count]
+    # Far off the axis twice the directions of the tables, as a turned table is read between them.
+    steep = farthest > STEEP * sampler.focal_length_mm
+    quarter = DIRECTIONS if steep else DIRECTIONS // 2
+    sampled = np.stack(
+        [[sampler.at(float(p), 0.0, float(m), quarter=quarter) for m in nodes[2]] for p in places]
+    )
+    # (places, m, radii, directions) to the series' coefficients; the next quarter mirrors this one.
+    whole = np.concatenate([sampled, sampled[..., -2:0:-1]], axis=-1)
+    harmonics = np.fft.rfft(whole, axis=-1).real / (2 * quarter)
+    harmonics[..., 1:-1] *= 2.0
+    to_points = (
+        _even_reader(places / farthest, distance / farthest) if farthest else np.ones((1, 1))
+    )
+    near = np.tensordot(to_points, harmonics, axes=(1, 0))
+    angle = 2.0 * (np.pi * np.arange(DIRECTIONS) / DIRECTIONS - azimuth[:, None])
+    turned = np.cos(np.arange(harmonics.shape[-1])[:, None] * angle[:, None, :])
+    values: Values = np.einsum("pmrk,pkd->pmrd", near, turned, optimize=True)
+    return values.reshape(*(axis.size for axis in nodes), *values.shape[2:])
+
+
+def _even_reader(nodes: Array, at: Array) -> Array:
+    """Return the matrix (at, nodes) that reads an even polynomial, known at nodes, elsewhere."""
+    bases = [np.polynomial.chebyshev.chebvander(x, 2 * nodes.size - 2)[:, ::2] for x in (nodes, at)]
+    return np.asarray(bases[1] @ np.linalg.inv(bases[0]))
+
+
+class _Stack:
+    """All bands' samples side by side, weighted like the detail of ordinary scenes.
+
+    Real and imaginary parts stand side by side too, so fields are real and common to all.
+    """
+
+    def __init__(self, bands: list[Values], radii: Array, frame_mm: float) -> None:
+        weight = np.repeat(_scene_power(radii, frame_mm), DIRECTIONS)
+        weight = np.sqrt(weight * SCENE_VARIANCE / weight.sum())
+        self._weight = np.maximum(weight, 1e-9 * weight.max())
+        self._imaginary = any(np.iscomplexobj(samples) for samples in bands)
+        parts = [
+            part
+            for samples in bands
+            for part in ((samples.real, samples.imag) if self._imaginary else (samples,))
+        ]
+        self._bands, self._parts = len(bands), len(parts)
+        self._stacked = np.concatenate([part * self._weight for part in parts], axis=1)
+
+    def best_fields(self) -> Array:
+        """Return orthonormal fields, (modes, points), the one that takes most away first."""
+        # Eigenvectors of the points' covariance: there are far fewer points than frequencies.
+        _, vectors = np.linalg.eigh(self._stacked @ self._stacked.T)
+        return np.ascontiguousarray(vectors[:, ::-1].T)[:MOST_MODES]
+
+    def along(self, fields: Array, spare: int = 0) -> tuple[Array, Array]:
+        """Return as many of these fields as need be and some to spare, or all, and the errors left.
+
+        errors as in Kernels: rms of a picture and largest of a frequency, by the number of modes.
+        """
+        rest = self._stacked.copy()
+        errors = np.full((len(fields) + 1, 2), np.inf)
+        done = 0
+        # Looked at in growing steps: each look costs as much as taking many modes away.
+        for count in (*(step for step in _COUNTS if step < len(errors)), len(errors) - 1):
+            some = fields[done:count]
+            rest -= some.T @ (some @ rest)
+            done = count
+            power = (rest * rest).reshape(len(rest), self._bands, -1).sum(axis=2)
+            single = np.abs(rest.reshape(len(rest), -1, self._weight.size) / self._weight).max()
+            errors[count] = math.sqrt(float(power.max())), float(single)
+            if errors[count, 0] <= PICTURE_RMS and errors[count, 1] <= SINGLE_OTF:
+                break
+        # What spare modes would leave is not looked at; they are for others.
+        return fields[: done + spare], errors[: done + 1]
+
+    def modes(self, fields: Array) -> list[Values]:
+        """Return each band's modes along these fields, (modes, frequencies)."""
+        shape = (len(fields), self._parts, self._weight.size)
+        flat = (fields @ self._stacked).reshape(shape) / self._weight
+        if not self._imaginary:
+            return [flat[:, k] for k in range(self._bands)]
+        return [flat[:, 2 * k] + 1j * flat[:, 2 * k + 1] for k in range(self._bands)]
 
 
 def _scene_power(radii: Array, frame_mm: float) -> Array:
@@ -327,56 +438,92 @@ def _coefficients(values: Array) -> Array:
 
 
 @lru_cache(maxsize=8)
-def _prepared(
-    camera: Camera, wavelength_nm: float | None, film_range: FilmRange, top_frequency: float
-) -> Kernels:
-    material = camera.material if wavelength_nm is None else camera.material.at(wavelength_nm)
-    return prepare(camera, material.channels, film_range, top_frequency)
-
-
 def prepared(
-    camera: Camera, wavelength_nm: float | None, film_range: FilmRange, top_frequency: float
+    camera: Camera,
+    wavelength_nm: float | None,
+    film_range: FilmRange,
+    top_frequency: float,
+    *,
+    family: Camera | None = None,
 ) -> Kernels:
-    """Return kernels as `prepare` does, once for each design and range."""
-    return _prepared(camera, wavelength_nm, film_range, top_frequency)
+    """Return kernels as `prepare` does, once for each design and range.
+
+    family : the camera with another hole whose fields are taken if they serve; None for its own.
+    """
+    material = camera.material if wavelength_nm is None else camera.material.at(wavelength_nm)
+    if family is None:
+        return prepare(camera, material.channels, film_range, top_frequency)
+    return prepare(
+        camera,
+        material.channels,
+        film_range,
+        top_frequency,
+        like=_family(family, wavelength_nm, film_range),
+    )
+
+
+@lru_cache(maxsize=8)
+def _family(camera: Camera, wavelength_nm: float | None, film_range: FilmRange) -> Kernels:
+    """Return the kernels that those of similar holes are made like."""
+    material = camera.material if wavelength_nm is None else camera.material.at(wavelength_nm)
+    shortest_mm = 1e-6 * min(float(c.wavelengths_nm.min()) for c in material.channels)
+    opening, z = camera.opening, camera.focal_length_mm
+    # The end of detail on the axis: by diffraction, or of the shadow, nine cycles across the hole.
+    end = min(opening.width_mm / (shortest_mm * z), 9.0 / (opening.width_mm * film_range.scale[0]))
+    return prepare(camera, material.channels, film_range, math.sqrt(2.0) * end, rough=True)
 
 
 class PolarReader:
-    """Reads tables of the kernels, (n, directions), at any |nu| and direction.
+    """Reads tables of the kernels, (n, directions), at given |nu| and directions of any shape.
 
     The tables are made fine first, along radii through their Chebyshev polynomial and along
     directions through their Fourier series; between the fine points reading is linear.
     """
 
-    def __init__(self, radii: Array) -> None:
-        count = radii.size
-        self._count, self._fine = count, 8 * count
+    def __init__(self, radii: Array, radius: Array, angle: Array) -> None:
+        self._count, self._fine = radii.size, 8 * radii.size
         self._top = float(radii[-1])
-        vander = np.polynomial.chebyshev.chebvander
-        nodes = -np.cos(np.pi * np.arange(count) / (count - 1))
-        fine = vander(np.linspace(-1.0, 1.0, self._fine), count - 1)
-        self._along = fine @ np.linalg.inv(vander(nodes, count - 1))
+        self._along = _finer(radii.size, self._fine)
+        r = np.minimum(radius * ((self._fine - 1) / self._top), self._fine - 1.000001)
+        a = np.mod(angle / (2.0 * np.pi), 1.0) * _AROUND
+        r0 = r.astype(np.intp)
+        a0 = np.minimum(a.astype(np.intp), _AROUND - 1)
+        self._cell = r0 * (_AROUND + 1) + a0
+        dr, da = r - r0, a - a0
+        within = np.where(radius <= self._top, 1.0, 0.0)
+        self._weights = [
+            within * (1.0 - dr) * (1.0 - da),
+            within * (1.0 - dr) * da,
+            within * dr * (1.0 - da),
+            within * dr * da,
+        ]
 
     def along(self, radial: Array) -> tuple[Array, Array]:
         """Return fine radii and values of a table without directions, (n,)."""
         return np.linspace(0.0, self._top, self._fine), self._along @ radial
 
-    def at(self, table: Values, radius: Array, angle: Array) -> Values:
-        """Return the table's values; zero beyond its end."""
-        around = 12 * DIRECTIONS  # over a full turn
+    def at(self, table: Values) -> Values:
+        """Return the table's values at the places; zero beyond its end."""
         whole = np.concatenate([table, np.conj(table)], axis=1)
         spectrum = np.fft.fft(whole, axis=1)
-        wide = np.zeros((self._count, around), np.complex128)
+        wide = np.zeros((self._count, _AROUND), np.complex128)
         wide[:, :DIRECTIONS] = spectrum[:, :DIRECTIONS]
         wide[:, -DIRECTIONS:] = spectrum[:, DIRECTIONS:]
-        turned = np.fft.ifft(wide, axis=1) * (around / (2 * DIRECTIONS))
+        turned = np.fft.ifft(wide, axis=1) * (_AROUND / (2 * DIRECTIONS))
         dense = self._along @ (turned if np.iscomplexobj(table) else turned.real)
-        dense = np.concatenate([dense, dense[:, :1]], axis=1)
-        r = np.minimum(radius * ((self._fine - 1) / self._top), self._fine - 1.000001)
-        a = np.mod(angle / (2.0 * np.pi), 1.0) * around
-        r0 = r.astype(np.intp)
-        a0 = np.minimum(a.astype(np.intp), around - 1)
-        dr, da = r - r0, a - a0
-        near = dense[r0, a0] * (1.0 - da) + dense[r0, a0 + 1] * da
-        far = dense[r0 + 1, a0] * (1.0 - da) + dense[r0 + 1, a0 + 1] * da
-        return np.asarray(np.where(radius <= self._top, near * (1.0 - dr) + far * dr, 0.0))
+        flat = np.concatenate([dense, dense[:, :1]], axis=1).ravel()
+        corners = (0, 1, _AROUND + 1, _AROUND + 2)
+        parts = [
+            weight * flat[self._cell + corner]
+            for corner, weight in zip(corners, self._weights, strict=True)
+        ]
+        return np.asarray(sum(parts))
+
+
+@lru_cache(maxsize=8)
+def _finer(count: int, fine: int) -> Array:
+    """Return the matrix (fine, count) from Chebyshev-Lobatto nodes to even steps."""
+    vander = np.polynomial.chebyshev.chebvander
+    nodes = -np.cos(np.pi * np.arange(count) / (count - 1))
+    dense = vander(np.linspace(-1.0, 1.0, fine), count - 1)
+    return np.asarray(dense @ np.linalg.inv(vander(nodes, count - 1)))

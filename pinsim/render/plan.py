@@ -5,12 +5,14 @@ grid that carries it all. A larger picture is an interpolation of it, a smaller 
 """
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from pinsim.camera import Camera
+from pinsim.camera.hole import HOLE_RANGE_MM
 from pinsim.errors import DesignError, out_of_range
 from pinsim.material import LONGEST_NM, SHORTEST_NM, Material
 from pinsim.optics import Ellipse, finest_detail
@@ -36,8 +38,18 @@ LARGE_TAIL_SHARE = 6e-3
 LARGE_FRAME_PX = 800_000
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
+# Round holes whose diameters lie within this step share margins and fields; the grid's pitch in steps.
+FAMILY_STEP = 2.0
+LEAST_FAMILY_SHADE = 0.5
+GRID_STEP = 1.12
+MOST_STEPPED_PX = 2_500_000
 MAX_GRID_PIXELS = 25_000_000
 MAX_WIDTH_PX = 20_000
+# Distances whose m = 1 + z/zo differ by no more than this are drawn as one: all that lies beyond 20 box
+# depths is, and then the far ones' blur is at most 1 part in 40 too large, the near ones' too small.
+ONE_DISTANCE = 1.05
+# Of the slant to which a panorama's distances along its rays are followed.
+LEAST_COSINE = 0.2
 _FEW_WAVELENGTHS = 5
 
 
@@ -47,7 +59,10 @@ class RenderPlan:
 
     pitch_mm : the grid's; shape : rows and columns of the frame; padded : of the grid with its
     margins; margin : rows above and columns left of the frame. distances_mm : nearest and farthest.
-    kernels : how the hole draws over the film and over these distances.
+    varied : these differ enough to be drawn apart.
+    kernels : how the hole draws over the film and over these distances. family : the camera with the
+    hole that stands for all similar ones, by which the light is dimmed and the margins are set; None
+    where there is no such family.
     averaged : the grid is coarser than the film image needs, so each pixel shows its own mean.
     """
 
@@ -58,7 +73,9 @@ class RenderPlan:
     padded: tuple[int, int]
     margin: tuple[int, int]
     distances_mm: tuple[float, float]
+    varied: bool
     kernels: Kernels
+    family: Camera | None
     averaged: bool
     notes: tuple[str, ...] = ()
 
@@ -150,11 +167,20 @@ def _good_length(least: int) -> int:
     return best
 
 
-def _distances(scene: Scene) -> tuple[float, float]:
-    """Return the nearest and the farthest distance of a scene, mm."""
+def _distances(scene: Scene, camera: Camera) -> tuple[float, float]:
+    """Return the nearest and the farthest distance of a scene along the hole's axis, mm."""
     if not isinstance(scene.distance, DistanceMap):
         return scene.distance, scene.distance
-    return scene.distance.nearest_mm, scene.distance.farthest_mm
+    nearest = scene.distance.nearest_mm
+    if scene.distance.along == "ray":
+        # What is as far along a slanting ray is nearer along the axis.
+        film = camera.film
+        corners = camera.surface.chief_rays(
+            film.shift_right_mm + 0.5 * film.width_mm * np.array([-1.0, 1.0, -1.0, 1.0]),
+            film.shift_up_mm + 0.5 * film.height_mm * np.array([-1.0, -1.0, 1.0, 1.0]),
+        )
+        nearest *= max(LEAST_COSINE, float(corners.direction[..., 2].min()))
+    return nearest, scene.distance.farthest_mm
 
 
 def make_plan(
@@ -163,10 +189,27 @@ def make_plan(
     *,
     wavelength_nm: float | None = None,
     averaged_px: int | None = None,
+    in_steps: bool = False,
 ) -> RenderPlan:
     """Decide grid, margin and kernels; refuse what cannot be rendered.
 
-    averaged_px : columns of a coarser picture whose pixels are means, if one is wanted.
+    averaged_px : columns of a coarser picture whose pixels are means, if one is wanted. in_steps : the
+    grid's pitch goes in steps, a little finer than need be, so that similar holes share a grid.
+    """
+    return plan_for(_distances(scene, camera), camera, wavelength_nm, averaged_px, in_steps)
+
+
+@lru_cache(maxsize=8)
+def plan_for(
+    distances_mm: tuple[float, float],
+    camera: Camera,
+    wavelength_nm: float | None = None,
+    averaged_px: int | None = None,
+    in_steps: bool = False,
+) -> RenderPlan:
+    """Return the plan for any scene between two distances, as make_plan does for one.
+
+    It needs nothing of the photo, so it can be made while that is still being read.
     """
     material = camera.material
     if wavelength_nm is not None:
@@ -176,9 +219,11 @@ def make_plan(
             )
         material = material.at(wavelength_nm)
     film = camera.film
-    nearest, farthest = _distances(scene)
+    nearest, farthest = distances_mm
     limit, end = _detail_limit(camera, material, farthest)
     natural = 0.5 / (HEADROOM * limit)
+    if in_steps and film.width_mm * film.height_mm < MOST_STEPPED_PX * natural**2:
+        natural = GRID_STEP ** math.floor(math.log(natural) / math.log(GRID_STEP))
     notes = []
     least = math.sqrt(film.width_mm * film.height_mm / MAX_GRID_PIXELS)
     pitch = max(natural, least)
@@ -192,14 +237,21 @@ def make_plan(
     columns = max(1, math.ceil(film.width_mm / pitch - 1e-9))
     pitch = film.width_mm / columns
     rows = max(1, round(film.height_mm / pitch))
-    padded, margin = _with_margins(camera, nearest, pitch, (rows, columns), material)
+    family = _family(camera)
+    widest = camera if family is None else family
+    greatest_mm = widest.hole.greatest_mm * (1.0 if family is None else FAMILY_STEP)
+    padded, margin = _with_margins(widest, greatest_mm, nearest, pitch, (rows, columns), material)
     z = camera.focal_length_mm
+    scale = (1.0 + z / farthest, 1.0 + z / nearest)
+    varied = scale[1] > ONE_DISTANCE * scale[0]
+    if not varied:
+        scale = (0.5 * sum(scale),) * 2
     # What lies beyond the frame is drawn as at its edge, a blur's width farther.
-    beyond = 2.0 * camera.hole.greatest_mm * (1.0 + z / nearest)
+    beyond = 2.0 * greatest_mm * (1.0 + z / nearest)
     film_range = FilmRange(
         u_mm=_reach(film.shift_right_mm, film.width_mm, beyond),
         v_mm=_reach(film.shift_up_mm, film.height_mm, beyond),
-        scale=(1.0 + z / farthest, 1.0 + z / nearest),
+        scale=scale,
     )
     return RenderPlan(
         camera=camera,
@@ -209,9 +261,15 @@ def make_plan(
         padded=padded,
         margin=margin,
         distances_mm=(nearest, farthest),
+        varied=varied,
         kernels=prepared(
-            camera, wavelength_nm, film_range, min(end, 1.0001 * math.sqrt(2.0) * HEADROOM * limit)
+            camera,
+            wavelength_nm,
+            film_range,
+            min(end, 1.0001 * math.sqrt(2.0) * max(HEADROOM * limit, 0.5 / pitch)),
+            family=None if varied else family,
         ),
+        family=family,
         averaged=pitch > 1.001 * natural,
         notes=tuple(notes),
     )
@@ -223,8 +281,35 @@ def _reach(shift_mm: float, side_mm: float, beyond_mm: float) -> tuple[float, fl
     return shift_mm - half, shift_mm + half
 
 
+def _family(camera: Camera) -> Camera | None:
+    """Return the camera with the hole that stands for all similar ones.
+
+    These are the round ones from its diameter to FAMILY_STEP times it; the classical best holes, 1.4 to
+    2 times sqrt(lambda z), are one family. A thick plate with a small hole has none: its shade over the
+    frame is too much each hole's own.
+    """
+    hole, film = camera.hole, camera.film
+    if hole.shape != "round":
+        return None
+    unit_mm = math.sqrt(550e-6 * camera.focal_length_mm)
+    step = math.floor(math.log(hole.diameter_mm / unit_mm) / math.log(FAMILY_STEP))
+    smallest_mm = unit_mm * FAMILY_STEP**step
+    if smallest_mm < HOLE_RANGE_MM[0]:
+        return None
+    family = replace(camera, hole=replace(hole, diameter_mm=smallest_mm))
+    if hole.plate_thickness_mm > 0.0:
+        u = film.shift_right_mm + 0.5 * film.width_mm * np.array([-1.0, 1.0])
+        v = film.shift_up_mm + 0.5 * film.height_mm * np.array([-1.0, 1.0])
+        corners = camera.surface.chief_rays(*np.meshgrid(u, v))
+        shade = family.opening.clear_share(hole.plate_thickness_mm * corners.tangent)
+        if float(shade.min()) < LEAST_FAMILY_SHADE:
+            return None
+    return family
+
+
 def _with_margins(
     camera: Camera,
+    greatest_mm: float,
     nearest_mm: float,
     pitch_mm: float,
     shape: tuple[int, int],
@@ -238,7 +323,7 @@ def _with_margins(
     large = shape[0] * shape[1] > LARGE_FRAME_PX
     share = LARGE_TAIL_SHARE if large else TAIL_SHARE
     tail_mm = 2.0 * longest_mm * z / (math.pi**2 * d * share)
-    shadow_mm = camera.hole.greatest_mm * (1.0 + z / nearest_mm)
+    shadow_mm = greatest_mm * (1.0 + z / nearest_mm)
     # At most half the frame beyond each side: past that a tail this faint is cheaper imagined.
     widest = pitch_mm * max(0.25 * (shape[0] + shape[1]), CHEAP_MARGIN_PX)
     reach_px = math.ceil((min(tail_mm, widest) + shadow_mm) / pitch_mm) + 8

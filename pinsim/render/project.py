@@ -1,6 +1,5 @@
 """Scene to film: what light comes from where each film pixel looks, and how far away that is."""
 
-import math
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
@@ -12,10 +11,6 @@ from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks, resampl
 from pinsim.scene import DistanceMap, Scene
 
 Float = NDArray[np.float32]
-Array = NDArray[np.float64]
-
-# scipy.ndimage's words for our rules of what lies beyond the photo.
-_BEYOND = {"mirror": "reflect", "extend": "nearest", "black": "grid-constant"}
 
 _THREADS = 2
 # Film that looks sideways or back, this close to the hole's plane: a flat photo has nothing there.
@@ -50,7 +45,10 @@ class FilmView:
 def project(scene: Scene, plan: RenderPlan) -> FilmView:
     """Lay the scene on the film grid, upright as the scene is seen."""
     if scene.projection == "equirectangular":
-        return _project_panorama(scene, plan)
+        # Loaded here, as it makes the FilmView defined above.
+        from pinsim.render.panorama import project_panorama
+
+        return project_panorama(scene, plan)
     if plan.camera.surface.flat:
         return _project_planes(scene, plan)
     return _project_bent(scene, plan)
@@ -83,7 +81,7 @@ def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
     return FilmView(
         plan=plan,
         light=np.moveaxis(planes, 0, -1),
-        inverse_distance=_distances(scene, np.rint(row)[:, None], np.rint(column)[None, :]),
+        inverse_distance=_distances(scene, plan, np.rint(row)[:, None], np.rint(column)[None, :]),
         covered=seen_rows[:, None] & seen_columns[None, :],
         compensate=step >= 1.0,
     )
@@ -176,9 +174,9 @@ def _project_bent(scene: Scene, plan: RenderPlan) -> FilmView:
     straight_index = np.rint(across)
     if upright:
         within = within.T
-        distances = _distances(scene, straight_index.T, bent_index.T)
+        distances = _distances(scene, plan, straight_index.T, bent_index.T)
     else:
-        distances = _distances(scene, bent_index, straight_index)
+        distances = _distances(scene, plan, bent_index, straight_index)
     return FilmView(
         plan=plan,
         light=np.moveaxis(planes, 0, -1),
@@ -188,9 +186,11 @@ def _project_bent(scene: Scene, plan: RenderPlan) -> FilmView:
     )
 
 
-def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float64]) -> Float | None:
+def _distances(
+    scene: Scene, plan: RenderPlan, row: NDArray[np.float64], column: NDArray[np.float64]
+) -> Float | None:
     """Return 1/distance at the nearest photo pixel; edges between near and far stay edges."""
-    if not isinstance(scene.distance, DistanceMap):
+    if not plan.varied or not isinstance(scene.distance, DistanceMap):
         return None
     # Distance always goes on beyond the photo's edge: "black" is about light only.
     beyond = "extend" if scene.beyond == "extend" else "mirror"
@@ -198,83 +198,3 @@ def _distances(scene: Scene, row: NDArray[np.float64], column: NDArray[np.float6
     return scene.distance.inverse_mm(
         fold(row.astype(np.intp), rows, beyond), fold(column.astype(np.intp), columns, beyond)
     )
-
-
-def _project_panorama(scene: Scene, plan: RenderPlan) -> FilmView:
-    """Lay an equirectangular picture on any film, each point looking up its own direction.
-
-    Read on a grid twice as fine, from a photo averaged down to that grid where it is finer still
-    everywhere, and brought to the film's grid like any photo.
-    """
-    from scipy.ndimage import map_coordinates
-
-    rows, columns = scene.photo.shape
-    around = scene.horizontal_view_deg >= 359.99
-    fine = plan.pitch_mm / 2.0
-    right = np.repeat(plan.right_mm(), 2) + np.tile([-0.5, 0.5], plan.padded[1]) * fine
-    up = np.repeat(plan.up_mm(), 2) + np.tile([0.5, -0.5], plan.padded[0]) * fine
-    row, column = _panorama_place(scene, plan, right, up)
-    steps = np.hypot(np.diff(row, axis=1), np.diff(column, axis=1))
-    shrink = max(1, math.floor(float(np.percentile(steps, 2.0))))
-    small = _averaged(scene, shrink)
-    place = [(row + 0.5) / shrink - 0.5, (column + 0.5) / shrink - 0.5]
-    mode = "grid-wrap" if around else _BEYOND[scene.beyond]
-
-    def read(channel: int) -> Float:
-        return np.asarray(
-            map_coordinates(small[..., channel], place, np.float32, order=3, mode=mode), np.float32
-        )
-
-    down, across = (
-        make_blocks(
-            np.arange(size) * 2 + 0.5, 2 * size, step=2.0, beyond="mirror", cutoff=ALIAS_FREE
-        )
-        for size in plan.padded
-    )
-    planes = np.empty((3, *plan.padded), np.float32)
-    with ThreadPoolExecutor(_THREADS) as pool:
-        for channel, dense in enumerate(pool.map(read, range(3))):
-            tall = np.empty((plan.padded[0], dense.shape[1]), np.float32)
-            for block in down:
-                tall[block.to] = block.weights @ dense[block.take]
-            for block in across:
-                planes[channel, :, block.to] = tall[:, block.take] @ block.weights.T
-    row, column = _panorama_place(scene, plan, plan.right_mm(), plan.up_mm())
-    inside = plan.inside
-    seen = (np.abs(row[inside] - 0.5 * (rows - 1)) <= 0.5 * rows) & (
-        around | (np.abs(column[inside] - 0.5 * (columns - 1)) <= 0.5 * columns)
-    )
-    return FilmView(
-        plan=plan,
-        light=np.moveaxis(np.maximum(planes, 0.0, out=planes), 0, -1),
-        inverse_distance=_distances(scene, np.rint(row), np.rint(column)),
-        covered=seen,
-        compensate=True,
-    )
-
-
-def _panorama_place(
-    scene: Scene, plan: RenderPlan, right_mm: Array, up_mm: Array
-) -> tuple[Array, Array]:
-    """Return the panorama's rows and columns that film points look at."""
-    points = plan.camera.surface.points_mm(right_mm[None, :], up_mm[:, None])
-    x, y, z = points[..., 0], points[..., 1], points[..., 2]
-    rows, columns = scene.photo.shape
-    per_rad = scene.focal_length_px
-    column = 0.5 * (columns - 1) + per_rad * np.arctan2(x, z)
-    return 0.5 * (rows - 1) - per_rad * np.arctan2(y, np.hypot(x, z)), column
-
-
-def _averaged(scene: Scene, shrink: int) -> Float:
-    """Return the photo's light averaged over squares of `shrink` pixels; odd rests are dropped."""
-    rows, columns = scene.photo.shape
-    if shrink == 1:
-        return scene.photo.linear()
-    out_rows, out_columns = rows // shrink, columns // shrink
-    small = np.empty((out_rows, out_columns, 3), np.float32)
-    for r in range(out_rows):
-        light = scene.photo.linear(
-            slice(r * shrink, (r + 1) * shrink), slice(0, out_columns * shrink)
-        )
-        small[r] = light.reshape(shrink, out_columns, shrink, 3).mean(axis=(0, 2))
-    return small

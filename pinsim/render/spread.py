@@ -6,8 +6,10 @@ cropped, so their long tails stay. Where the scene has a distance map, what arri
 equally spread coverage, so that borders between unlike kernels neither lose nor invent light.
 """
 
+from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
-from threading import Lock
+from functools import lru_cache
+from threading import Condition
 from typing import Any
 
 import numpy as np
@@ -15,6 +17,8 @@ from numpy.typing import NDArray
 from scipy import fft
 
 from pinsim.progress import Progress, Reporter, ignore
+from pinsim.render.illuminate import own_shade
+from pinsim.render.kept import Kept
 from pinsim.render.kernels import BandKernels, Kernels, PolarReader, Values, chebyshev_values
 from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
@@ -24,6 +28,9 @@ Float = NDArray[np.float32]
 Array = NDArray[np.float64]
 Spectrum = NDArray[np.complex64]
 Kernel = NDArray[np.inexact[Any]]
+# A kernel on the grid of frequencies, made when rows of it are asked for: whole, it is as large as a
+# spectrum, and there are some tens of them.
+_Rows = Callable[[slice], Kernel]
 
 _THREADS = 2
 LEAST_RESPONSE = 0.02
@@ -32,12 +39,17 @@ LEAST_RESPONSE = 0.02
 LARGE_GRID_PX = 600_000
 LARGE_PICTURE_RMS = 1e-3
 LARGE_SINGLE_OTF = 4e-2
+_RADIUS_STEPS = 1 << 15  # of a kernel's average along the radius: the nearest errs by 1e-4 at most
+_ROWS = 48  # of a spectrum at once
 # Cells of the table a mode is read from, along each axis of frequency.
 _TABLE_CELLS = 96
 
 
-def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
-    """Return the exposure of frame and margins, float32 (channels, rows, columns)."""
+def spread(view: FilmView, *, kept: Kept | None = None, report: Reporter = ignore) -> Float:
+    """Return the exposure of frame and margins, float32 (channels, rows, columns).
+
+    kept : where transforms of this view are found and left for another look.
+    """
     plan = view.plan
     kernels = plan.kernels
     count = len(kernels.fields)
@@ -48,9 +60,16 @@ def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
     light = _Sum(len(plan.material.channels), grid.shape)
     cover = None if view.inverse_distance is None else _Sum(len(light.spectra), grid.shape)
     planes = np.moveaxis(view.light, -1, 0)
+    spectra = None if kept is None else kept.spectra
 
     def add(mode: int) -> None:
-        _add_mode(mode, kernels, planes, grid, fields, light, cover)
+        try:
+            _add_mode(mode, kernels, planes, grid, fields, light, cover, spectra)
+        except BaseException:
+            for total in (light, cover):
+                if total is not None:
+                    total.give_up()
+            raise
 
     with ThreadPoolExecutor(_THREADS) as pool:
         for done, _ in enumerate(pool.map(add, range(-1, count))):
@@ -59,19 +78,44 @@ def spread(view: FilmView, *, report: Reporter = ignore) -> Float:
     if cover is not None:
         # Coverage is 1 up to what unlike kernels lose or invent at borders of distance.
         exposure /= np.maximum(_inverse(cover.spectra, plan), 0.1)
+    shade = own_shade(plan)
+    if shade is not None:
+        exposure *= shade
     return exposure
 
 
 class _Sum:
-    """Spectra of the film's channels, added to from several threads."""
+    """Spectra of the film's channels, added to from several threads, always in the same order.
+
+    The order of a sum decides its last bit, and the same design must give the same picture.
+    """
 
     def __init__(self, channels: int, shape: tuple[int, int]) -> None:
         self.spectra: Spectrum = np.zeros((channels, *shape), np.complex64)
-        self._locks = [Lock() for _ in range(channels)]
+        self._added = [0] * channels
+        self._turn = Condition()
+        self._broken = False
 
-    def add(self, channel: int, spectrum: Kernel) -> None:
-        with self._locks[channel]:
-            self.spectra[channel] += spectrum
+    def add(self, turn: int, channel: int, source: Spectrum, kernel: _Rows) -> None:
+        """Add source times kernel as a channel's turn-th part, when those before it are in.
+
+        Some rows at a time: what is made of them stays in the processor's cache.
+        """
+        total = self.spectra[channel]
+        with self._turn:
+            self._turn.wait_for(lambda: self._broken or self._added[channel] == turn)
+        for start in range(0, total.shape[0], _ROWS):
+            rows = slice(start, min(start + _ROWS, total.shape[0]))
+            total[rows] += source[rows] * kernel(rows)
+        with self._turn:
+            self._added[channel] += 1
+            self._turn.notify_all()
+
+    def give_up(self) -> None:
+        """Let nobody wait for a part that will never come."""
+        with self._turn:
+            self._broken = True
+            self._turn.notify_all()
 
 
 def _add_mode(
@@ -82,24 +126,32 @@ def _add_mode(
     fields: "_Fields",
     light: _Sum,
     cover: _Sum | None,
+    kept: dict[tuple[int, int], Spectrum] | None,
 ) -> None:
     """Weight the light by one mode's field (-1: the mean's, which is 1), transform, filter, add."""
-    field = None if mode < 0 else fields.field(kernels.fields[mode])
+    known = kept is not None and all((mode, band.band) in kept for band in kernels.bands)
+    field = None if mode < 0 or known else fields.field(kernels.fields[mode])
     covered = None
     if cover is not None:
         white = np.ones(planes.shape[1:], np.float32) if field is None else field
         covered = np.asarray(fft.rfft2(white))
     spectra: dict[int, Spectrum] = {}
-    for band in kernels.bands:
-        if band.band not in spectra:
+    for number, band in enumerate(kernels.bands):
+        same = [other.channel == band.channel for other in kernels.bands]
+        turn = (mode + 1) * sum(same) + sum(same[:number])
+        if kept is not None and known:
+            spectra[band.band] = kept[mode, band.band]
+        elif band.band not in spectra:
             plane = planes[band.band]
             spectra[band.band] = np.asarray(fft.rfft2(plane if field is None else plane * field))
+            if kept is not None:
+                kept[mode, band.band] = spectra[band.band]
         kernel = grid.mean(band) if mode < 0 else grid.mode(band, mode)
-        last = all(other.band != band.band for other in kernels.bands if other is not band)
-        source = spectra.pop(band.band) if last else spectra[band.band]
-        light.add(band.channel, np.multiply(source, kernel, out=source if last else None))
+        light.add(turn, band.channel, spectra[band.band], kernel)
+        if all(other.band != band.band for other in kernels.bands if other is not band):
+            del spectra[band.band]
         if cover is not None and covered is not None:
-            cover.add(band.channel, covered * kernel)
+            cover.add(turn, band.channel, covered, kernel)
 
 
 def _inverse(spectra: Spectrum, plan: RenderPlan) -> Float:
@@ -157,18 +209,20 @@ class _Frequencies:
             np.linspace(-end, end, 2 * _TABLE_CELLS + 1),
             np.linspace(0.0, end, _TABLE_CELLS + 1),
         )
-        self._radius = np.hypot(cells[0][:, None], cells[1][None, :])
-        self._angle = np.arctan2(cells[0][:, None], cells[1][None, :])
-        self._hats = [
-            _hats(axis, own) * window[:, None]
-            for axis, own, window in zip((down, across), cells, self._window, strict=True)
-        ]
-        # |nu| of the upper half of the rows; the lower half mirrors it.
-        self._upper = np.hypot(down[: rows // 2 + 1, None], across[None, :]).astype(np.float32)
-        self._mirror = rows - np.arange(rows // 2 + 1, rows)
-        self._reader = PolarReader(plan.kernels.radii)
+        self._reader = PolarReader(
+            plan.kernels.radii,
+            np.hypot(cells[0][:, None], cells[1][None, :]),
+            np.arctan2(cells[0][:, None], cells[1][None, :]),
+        )
+        # Each row of frequencies lies between two rows of cells; nothing is drawn beyond the cells.
+        place = np.clip((down + end) * (_TABLE_CELLS / end), 0.0, 2 * _TABLE_CELLS - 1e-6)
+        cell = place.astype(np.intp)
+        within = self._window[0] * (np.abs(down) <= end)
+        self._cells_down = (cell, (place - cell).astype(np.float32), within.astype(np.float32))
+        self._cells_across = _hats(across, cells[1]) * self._window[1][:, None]
+        self._down, self._across = down.astype(np.float32), across.astype(np.float32)
 
-    def mean(self, band: BandKernels) -> Kernel:
+    def mean(self, band: BandKernels) -> _Rows:
         """Return the mean kernel at every frequency.
 
         Its average over directions is read along the radius, which keeps the point it has at zero
@@ -176,23 +230,44 @@ class _Frequencies:
         """
         average = band.mean.real.mean(axis=1)
         radius, fine = self._reader.along(average)
-        upper = np.interp(self._upper, radius, fine, right=0.0).astype(np.float32)
-        upper *= np.float32(band.share)
-        kernel = np.concatenate([upper, upper[self._mirror]])
-        kernel *= self._window[0][:, None]
-        kernel *= self._window[1]
-        return kernel + self._from_table(band.mean - average[:, None], band.share)
+        steps = np.linspace(0.0, float(radius[-1]), _RADIUS_STEPS)
+        # One more step, of nothing, for all that lies beyond the end.
+        table = np.append(band.share * np.interp(steps, radius, fine), 0.0).astype(np.float32)
+        per_step = np.float32((_RADIUS_STEPS - 1) / radius[-1])
+        rest = self._from_table(band.mean - average[:, None], band.share)
 
-    def mode(self, band: BandKernels, mode: int) -> Kernel:
+        def rows(some: slice) -> Kernel:
+            at = np.hypot(self._down[some, None], self._across)
+            at *= per_step
+            at += np.float32(0.5)
+            kernel: Kernel = np.take(table, at.astype(np.int32), mode="clip")
+            kernel *= self._window[0][some, None]
+            kernel *= self._window[1]
+            kernel = kernel + rest(some)
+            return kernel
+
+        return rows
+
+    def mode(self, band: BandKernels, mode: int) -> _Rows:
         """Return a mode at every frequency."""
         return self._from_table(band.modes[mode], band.share)
 
-    def _from_table(self, values: Values, share: float) -> Kernel:
+    def _from_table(self, values: Values, share: float) -> _Rows:
         """Read a polar table through a coarser square one, by linear interpolation."""
-        table = share * self._reader.at(values, self._radius, self._angle)
+        table = share * self._reader.at(values)
         kind = np.complex64 if np.iscomplexobj(table) else np.float32
-        kernel: Kernel = self._hats[0] @ (table.astype(kind) @ self._hats[1].T)
-        return kernel
+        wide = table.astype(kind) @ self._cells_across.T
+        step = np.diff(wide, axis=0)
+
+        def rows(some: slice) -> Kernel:
+            cell, share, window = (part[some] for part in self._cells_down)
+            kernel: Kernel = np.take(step, cell, axis=0)
+            kernel *= share[:, None]
+            kernel += np.take(wide, cell, axis=0)
+            kernel *= window[:, None]
+            return kernel
+
+        return rows
 
 
 def _hats(axis: Array, cells: Array) -> Float:
@@ -202,6 +277,13 @@ def _hats(axis: Array, cells: Array) -> Float:
     return np.asarray(near, np.float32)
 
 
+@lru_cache(maxsize=1)
+def _response_table() -> tuple[Array, Array]:
+    """Return cycles per pixel up to the grid's end and what resampling leaves there."""
+    fine = np.linspace(0.0, 0.5, 801)  # linear between them to 1e-5
+    return fine, response(fine / ALIAS_FREE)
+
+
 def _pixel_response(cycles_per_px: Array, averaged: bool, compensate: bool) -> Array:
     """Return what spreading does besides: give back what resampling dimmed, or average pixels."""
     if averaged:
@@ -209,6 +291,6 @@ def _pixel_response(cycles_per_px: Array, averaged: bool, compensate: bool) -> A
         return np.asarray(np.sinc(cycles_per_px))
     if not compensate:
         return np.ones_like(cycles_per_px)
-    left = response(cycles_per_px / ALIAS_FREE)
+    left = np.interp(np.abs(cycles_per_px), *_response_table())
     # Below this the grid ends, and with it all but a trace of the transfer function.
     return np.where(left > LEAST_RESPONSE, 1.0 / np.maximum(left, LEAST_RESPONSE), 0.0)
