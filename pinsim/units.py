@@ -49,6 +49,8 @@ _SPELLINGS = {
     "seconds": "s",
     "minutes": "min",
     "hours": "h",
+    "pixel": "px",
+    "pixels": "px",
 }
 _QUANTITY = re.compile(
     r"\s*(?P<number>[-+]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][-+]?\d+)?)"
@@ -112,6 +114,11 @@ def distance_mm(text: object, where: str) -> float:
             "For the far horizon write 'infinity'."
         )
     return value
+
+
+def pixels(text: object, where: str) -> float:
+    """Return a length in a picture such as "812 px" or "1/256 px" in pixels."""
+    return _parse(text, where, {"px": 1.0}, "812 px")
 
 
 def wavelength_nm(text: object, where: str) -> float:

@@ -1060,6 +1060,7 @@ def write_scene(path: Path, shot: Shot) -> None:
         "[distance]\n"
         'map = "distance.png"\n'
         f'step = "{shot.step_mm} mm"\n'
+        'holes = "far"\n'
         "[light]\n"
         f"ev = {shot.ev:g}          # scene average, ISO 100\n",
         encoding="ascii",
