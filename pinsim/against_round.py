@@ -52,7 +52,7 @@ class AgainstRound:
 
 def against_round(camera: Camera, *, wavelength_nm: float | None = None) -> AgainstRound:
     """Return what a camera's hole does against a round one, for its material's light or one colour."""
-    light = light_for(wavelength_nm, camera.material_name).condensed()
+    light = light_for(wavelength_nm, camera.material).condensed()
     hole = Hole(
         diameter_mm=camera.hole.diameter_mm, plate_thickness_mm=camera.hole.plate_thickness_mm
     )

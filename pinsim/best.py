@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from pinsim import optics
 from pinsim.camera import Camera
 from pinsim.errors import DesignError, out_of_range
-from pinsim.material import LONGEST_NM, SHORTEST_NM
+from pinsim.material import LONGEST_NM, SHORTEST_NM, Material
 from pinsim.material import material as material_named
 from pinsim.optics.sharpness import detail_anywhere
 
@@ -27,7 +27,7 @@ _ROUND = 0.06  # a peak that falls more than this from one size to the next is n
 DEFAULT_WAVELENGTH_NM = 550.0
 
 
-def light_for(wavelength_nm: float | None, material: str | None) -> "optics.Light":
+def light_for(wavelength_nm: float | None, material: str | Material | None) -> "optics.Light":
     """Return the light to judge sharpness by: one wavelength, a material's own, or mid-green."""
     if wavelength_nm is not None:
         if not SHORTEST_NM <= wavelength_nm <= LONGEST_NM:
@@ -36,7 +36,7 @@ def light_for(wavelength_nm: float | None, material: str | None) -> "optics.Ligh
             )
         return optics.Light(wavelengths_nm=np.array([wavelength_nm]))
     if material is not None:
-        return material_named(material).light
+        return (material_named(material) if isinstance(material, str) else material).light
     return optics.Light(wavelengths_nm=np.array([DEFAULT_WAVELENGTH_NM]))
 
 

@@ -154,7 +154,7 @@ def figures(
     best : also look for the best hole, what others cost, and at places off the middle (the slow
     part; NaN, None and nothing without it).
     """
-    light = light_for(wavelength_nm, camera.material_name)
+    light = light_for(wavelength_nm, camera.material)
     return Figures(
         name=camera.name,
         hole_mm=camera.hole.diameter_mm,

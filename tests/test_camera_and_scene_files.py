@@ -84,7 +84,6 @@ def test_the_example_map_loads(write, courtyard):
     text = COURTYARD.replace('constant = "4 m"', 'map = "courtyard-distance.png"\nstep = "1 mm"')
     scene = Scene.load(write(text, "place.toml"))
     assert scene.name == "place"
-    assert scene.distance.step_mm == 1.0
     np.testing.assert_array_equal(scene.distance.codes, codes)
     # Code 0 is infinitely far, so its reciprocal is 0; code 2000 is 2 m.
     rows, columns = np.array([0, 2000 // 72]), np.array([0, 2000 % 72])

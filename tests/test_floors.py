@@ -11,7 +11,8 @@ ROOT = Path(__file__).resolve().parents[1] / "pinsim"
 # Lowest first; a room or file may use what stands above it in this table, never below or beside.
 FLOORS = (
     {"errors", "progress", "colour", "optics"},
-    {"units", "tables", "samples", "files", "material", "classical", "tools"},
+    {"units", "tables", "samples", "files", "classical", "tools"},
+    {"material"},
     {"scene"},
     {"tracing"},
     {"camera"},
@@ -26,10 +27,10 @@ FLOOR = {name: number for number, names in enumerate(FLOORS) for name in names}
 # Who may load what, besides numpy and the standard library. optics is pure mathematics.
 MAY_LOAD = {
     "optics": {"scipy"},
-    "scene": {"PIL", "imagecodecs", "tifffile"},
+    "scene": {"OpenEXR", "PIL", "imagecodecs", "pillow_heif", "rawpy", "scipy", "skimage", "tifffile"},
     "files": {"PIL", "imagecodecs", "imageio"},
     "render": {"scipy", "skimage"},
-    "sheets": {"PIL"},
+    "sheets": {"PIL", "reportlab"},
     "tracing": {"scipy", "skimage"},
     "cli": {"click", "rich"},
 }

@@ -9,7 +9,10 @@ import pytest
 from pinsim.cli import COMMANDS
 
 ROOT = Path(__file__).resolve().parents[1]
-HEAVY = ("PIL", "imagecodecs", "imageio", "numpy", "rich", "scipy", "skimage", "tifffile")
+HEAVY = (
+    *("OpenEXR", "PIL", "imagecodecs", "imageio", "numpy", "pillow_heif", "rawpy", "rich", "scipy"),
+    *("skimage", "tifffile"),
+)
 
 
 def loaded_by(code):
@@ -44,9 +47,17 @@ def test_help_for_a_command_loads_nothing_heavy(command):
     assert loaded_by(f"from pinsim.cli import main; main([{command!r}, '--help'])") == []
 
 
-@pytest.mark.parametrize("command", ["preview", "compare", "contact-sheet", "numbers", "trace"])
+@pytest.mark.parametrize(
+    "command", ["preview", "compare", "contact-sheet", "numbers", "exposure", "trace"]
+)
 def test_a_misspelt_quantity_is_refused_before_anything_heavy_is_loaded(command):
     code = f"from pinsim.cli import main; main([{command!r}, '--hole', '0,3mm'])"
+    assert loaded_by(code) == []
+
+
+@pytest.mark.parametrize("command", ["preview", "exposure"])
+def test_a_light_that_cannot_be_read_is_refused_before_anything_heavy_is_loaded(command):
+    code = f"from pinsim.cli import main; main([{command!r}, 'a.jpg', '--light', 'fog'])"
     assert loaded_by(code) == []
 
 

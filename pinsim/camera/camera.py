@@ -10,7 +10,7 @@ import numpy as np
 from pinsim.camera.film import Film, named_film
 from pinsim.camera.hole import Hole
 from pinsim.errors import DesignError, out_of_range
-from pinsim.material import DEFAULT_MATERIAL, Material, material
+from pinsim.material import BUILT_IN, DEFAULT_MATERIAL, Catalogue, Material
 from pinsim.optics import ChiefRays, FilmSurface, Opening
 from pinsim.units import format_length
 
@@ -24,13 +24,17 @@ _LEAST_AHEAD = 0.01
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Camera:
-    """A lensless camera. focal_length_mm is the distance from the hole to the film along the axis."""
+    """A lensless camera. focal_length_mm is the distance from the hole to the film along the axis.
+
+    materials : where material_name is looked up.
+    """
 
     name: str = "camera"
     focal_length_mm: float
     hole: Hole
     film: Film = field(default_factory=lambda: named_film("6x6"))
     material_name: str = DEFAULT_MATERIAL
+    materials: Catalogue = field(default=BUILT_IN, repr=False)
     tone: Tone = "positive"
 
     def __post_init__(self) -> None:
@@ -53,7 +57,7 @@ class Camera:
         if self.tone not in TONES:
             raise DesignError(f"tone is {self.tone!r}; it must be one of: positive, negative.")
         self._refuse_film_behind_hole()
-        material(self.material_name)
+        _ = self.material
 
     def _refuse_film_behind_hole(self) -> None:
         film = self.film
@@ -78,7 +82,7 @@ class Camera:
     @property
     def material(self) -> Material:
         """The material that lies in the film plane."""
-        return material(self.material_name)
+        return self.materials.material(self.material_name)
 
     @property
     def opening(self) -> Opening:

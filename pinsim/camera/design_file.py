@@ -9,7 +9,7 @@ from pinsim.camera.camera import TONES, Camera
 from pinsim.camera.film import BEND_AXES, Film, named_film
 from pinsim.camera.hole import SHAPES, Hole
 from pinsim.errors import DesignError, SceneError
-from pinsim.material import DEFAULT_MATERIAL, material
+from pinsim.material import BUILT_IN, DEFAULT_MATERIAL, Catalogue
 from pinsim.samples import resolve
 from pinsim.tables import Table, read_toml
 from pinsim.tracing.scale import Reference, Scale
@@ -31,7 +31,7 @@ def _camera(top: Table, folder: Path) -> Camera:
     name = top.text("name", "camera")
     focal_length = length_mm(top.need("focal_length", '"60 mm"'), top.place("focal_length"))
     hole = _hole(top.table("hole"), folder)
-    film, material_name = _film(top.table("film"))
+    film, material_name, materials = _film(top.table("film"), folder)
     tone = top.text("tone", "positive", TONES)
     top.refuse_leftovers()
     try:
@@ -41,6 +41,7 @@ def _camera(top: Table, folder: Path) -> Camera:
             hole=hole,
             film=film,
             material_name=material_name,
+            materials=materials,
             tone="negative" if tone == "negative" else "positive",
         )
     except DesignError as error:
@@ -134,9 +135,10 @@ def _point(table: Table, key: str, example: str) -> tuple[float, float]:
     return _number(value[0], place, "12"), _number(value[1], place, "40")
 
 
-def _film(table: Table) -> tuple[Film, str]:
+def _film(table: Table, folder: Path) -> tuple[Film, str, Catalogue]:
     right, up = _two_lengths(table, "shift", table.take("shift", ["0 mm", "0 mm"]))
     material_name = table.text("material", DEFAULT_MATERIAL)
+    own_materials = table.text("materials", "")
     radius, axis = _surface(table)
     portrait = table.text("orientation", "landscape", ("landscape", "portrait")) == "portrait"
     try:
@@ -154,7 +156,8 @@ def _film(table: Table) -> tuple[Film, str]:
                 width, height = min(width, height), max(width, height)
             film = Film(width_mm=width, height_mm=height)
         table.refuse_leftovers()
-        material(material_name)
+        materials = Catalogue.load(folder / own_materials) if own_materials else BUILT_IN
+        materials.material(material_name)
         film = replace(
             film,
             shift_right_mm=right,
@@ -164,7 +167,7 @@ def _film(table: Table) -> tuple[Film, str]:
         )
     except DesignError as error:
         raise _located(error, table) from None
-    return film, material_name
+    return film, material_name, materials
 
 
 def _surface(table: Table) -> tuple[float, str]:

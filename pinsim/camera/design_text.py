@@ -24,8 +24,12 @@ class TracedFrom:
     diameter_mm: float | None = None
 
 
-def design_text(camera: Camera, *, traced: TracedFrom | None = None) -> str:
-    """Return the TOML of a design. traced : needed for a traced hole, which the scan holds."""
+def design_text(camera: Camera, *, traced: TracedFrom | None = None, materials: str = "") -> str:
+    """Return the TOML of a design.
+
+    traced : needed for a traced hole, which the scan holds. materials : the path of the camera's own
+    materials as the design will give it, if it has some.
+    """
     lines = [
         f"name = {_quoted(camera.name)}",
         f"focal_length = {_length(camera.focal_length_mm)}",
@@ -37,6 +41,7 @@ def design_text(camera: Camera, *, traced: TracedFrom | None = None) -> str:
         "[film]",
         *_film_lines(camera.film),
         f"material = {_quoted(camera.material_name)}",
+        *([f"materials = {_quoted(materials)}"] if materials else []),
     ]
     return "\n".join(lines) + "\n"
 

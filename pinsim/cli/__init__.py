@@ -4,7 +4,8 @@ __init__.py     the table of commands, and how every error becomes one line
 options.py      quantities and the options that commands share
 designs.py      what was typed -> Scenes and Cameras
 show.py         progress bars, tables and what is printed at the end
-preview.py, compare.py, contact_sheet.py, numbers.py, trace.py    one command each
+preview.py, compare.py, contact_sheet.py, numbers.py, exposure.py, materials.py, trace.py
+                one command each
 """
 
 import importlib
@@ -26,6 +27,8 @@ COMMANDS = {
         "pinsim.cli.numbers",
         "Print a camera's figures: sharpness, angles, light, best hole.",
     ),
+    "exposure": ("pinsim.cli.exposure", "Tell times by light and material; print them as a card."),
+    "materials": ("pinsim.cli.materials", "List films, papers and sensors, or tell all of one."),
     "trace": ("pinsim.cli.trace", "Measure a drilled hole from its scan, and design with it."),
 }
 

@@ -9,8 +9,11 @@ from typing import Any
 
 from pinsim.camera import Camera, Film, Hole, named_film
 from pinsim.errors import DesignError
+from pinsim.exposure import LightLevel
+from pinsim.material import Catalogue
 from pinsim.samples import PREFIX, names
 from pinsim.scene import Scene
+from pinsim.scene.distance_table import distances_from_options
 from pinsim.units import format_length, length_mm
 
 _SIZE = re.compile(r"(?P<width>[\d.]+\s*[a-z]+)\s*x\s*(?P<height>[\d.]+\s*[a-z]+)")
@@ -23,10 +26,11 @@ def load_scene(path: str, options: Mapping[str, Any]) -> Scene:
         path,
         horizontal_view_deg=options.get("view_deg"),
         distance_mm=options.get("distance_mm"),
-        distance_map=options.get("distance_map"),
-        map_step_mm=options.get("map_step_mm"),
+        distances=distances_from_options(options),
         projection=options.get("projection"),
         beyond=options.get("beyond"),
+        look_at_deg=options.get("look_at_deg"),
+        highlight_lift_stops=options.get("highlight_lift_stops"),
     )
 
 
@@ -57,7 +61,14 @@ def change_camera(camera: Camera, options: Mapping[str, Any]) -> Camera:
     if options.get("rise_mm") is not None:
         film = replace(film, shift_up_mm=options["rise_mm"])
     camera = replace(camera, film=film)
-    if options.get("material") is not None:
+    if options.get("materials_file") is not None:
+        # Together: the name may be known to this file only.
+        camera = replace(
+            camera,
+            materials=Catalogue.load(options["materials_file"]),
+            material_name=options.get("material") or camera.material_name,
+        )
+    elif options.get("material") is not None:
         camera = replace(camera, material_name=options["material"])
     if options.get("tone"):
         camera = replace(camera, tone=options["tone"])
@@ -131,10 +142,20 @@ def _film(text: str | None, portrait: bool | None, present: Film) -> Film:
 
 
 def assumed(paths: Sequence[str | None], options: Mapping[str, Any]) -> list[str]:
-    """Return what was taken for granted of a typed design, to be said with the result."""
-    if any(paths) or options.get("film"):
-        return []
-    return [f"film taken as {DEFAULT_FILM} (--film to change)"]
+    """Return what was taken for granted of a typed design and a light, to be said with the result."""
+    notes = []
+    if not any(paths) and not options.get("film"):
+        notes.append(f"film taken as {DEFAULT_FILM} (--film to change)")
+    if options.get("light") is not None:
+        notes.append(read_as(options["light"]))
+    return notes
+
+
+def read_as(light: LightLevel) -> str:
+    """Return the line that says how a light was read."""
+    between = f" (EV {light.ev_text}, its middle)" if light.low_ev != light.high_ev else ""
+    note = f"; {light.note}" if light.note else ""
+    return f"light: {light.given} is EV {round(light.ev, 1):g} at ISO 100{between}{note}"
 
 
 def default_output(stem: str, suffix: str = ".png") -> Path:

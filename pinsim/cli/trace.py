@@ -64,7 +64,8 @@ def command(
     check_target(target, overwrite=overwrite, suffixes=PICTURE_SUFFIXES, inputs=[source])
     design_file = Path(design) if design else None
     if design_file:
-        check_target(design_file, overwrite=overwrite, suffixes=(".toml",), inputs=[source])
+        inputs = [source, *([Path(given["materials_file"])] if given["materials_file"] else [])]
+        check_target(design_file, overwrite=overwrite, suffixes=(".toml",), inputs=inputs)
     hole = trace_hole(
         source,
         scale=scale,
@@ -97,9 +98,10 @@ def _refuse_camera_options(given: dict[str, Any]) -> None:
     """Refuse what says something of a camera when there is none."""
     from pinsim.errors import DesignError
 
-    for key in ("design", "name", "film", "plate_mm", "shift_mm", "rise_mm", "material", "tone"):
+    of_film = ("film", "plate_mm", "shift_mm", "rise_mm", "material", "materials_file", "tone")
+    for key in ("design", "name", *of_film):
         if given[key] is not None:
-            option = f"--{key.removesuffix('_mm')}"
+            option = f"--{key.removesuffix('_mm').removesuffix('_file')}"
             raise DesignError(
                 f"{option} is of a camera, but how far its film is from the hole is not told; "
                 "give it, for example --focal-length 60mm."
@@ -133,19 +135,26 @@ def _write_design(
     from pinsim.camera.design_text import TracedFrom, design_text
     from pinsim.files import write_whole
 
-    try:
-        image = Path(os.path.relpath(source.resolve(), file.resolve().parent)).as_posix()
-    except ValueError:  # on another drive of Windows there is no way from here to there
-        image = source.resolve().as_posix()
     traced = TracedFrom(
-        image=image,
+        image=_as_seen_from(file, source),
         scale=scale,
         seen_from=hole.seen_from,
         polarity=hole.polarity,
         diameter_mm=given["diameter_mm"],
     )
-    text = design_text(camera, traced=traced)
+    own = camera.materials.file
+    text = design_text(
+        camera, traced=traced, materials=_as_seen_from(file, Path(own)) if own else ""
+    )
     write_whole(file, lambda out: _put(out, text), overwrite=overwrite)
+
+
+def _as_seen_from(design: Path, other: Path) -> str:
+    """Return the path of a file as a design names it."""
+    try:
+        return Path(os.path.relpath(other.resolve(), design.resolve().parent)).as_posix()
+    except ValueError:  # on another drive of Windows there is no way from here to there
+        return other.resolve().as_posix()
 
 
 def _put(out: Any, text: str) -> None:

@@ -69,8 +69,12 @@ def ray_otf(
     plate_thickness_mm: float,
     distance_mm: float,
     wavelength_nm: float,
+    quick: bool = False,
 ) -> NDArray[np.float64] | NDArray[np.complex128]:
-    """Return the transfer function of one chief ray. frequency : (n, 2). Returns (n,)."""
+    """Return the transfer function of one chief ray. frequency : (n, 2). Returns (n,).
+
+    quick : an error of 1e-6 is allowed.
+    """
     if float(rays.falloff) <= 0.0:
         return np.zeros(len(frequency))
     wavelength_mm = wavelength_nm * 1e-6
@@ -78,4 +82,5 @@ def ray_otf(
         wavelength_mm * (frequency @ rays.shift.T),
         rays.focus(distance_mm) / wavelength_mm,
         plate_thickness_mm * rays.tangent,
+        quick=quick,
     )

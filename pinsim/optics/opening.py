@@ -44,8 +44,13 @@ class Opening(Protocol):
     def clear_share(self, plate_shift_mm: Array) -> Array:
         """Return |A and A shifted| / |A| for shifts (..., 2): what a thick plate lets through."""
 
-    def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Array | Complex:
-        """Return the overlap integral. shift (n, 2); curvature (2, 2); plate_shift (2,)."""
+    def otf(
+        self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
+    ) -> Array | Complex:
+        """Return the overlap integral. shift (n, 2); curvature (2, 2); plate_shift (2,).
+
+        quick : 1e-6 is exact enough, if that is faster.
+        """
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -77,10 +82,14 @@ class Ellipse:
         x, y = (np.asarray(plate_shift_mm)[..., k] for k in (0, 1))
         return lens_share(np.hypot(x * (2.0 / self.right_mm), y * (2.0 / self.up_mm)))
 
-    def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Array:
+    def otf(
+        self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
+    ) -> Array:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
         wave = (shift_mm @ curvature.T) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm])
-        return disc_overlap(self._on_unit_disc(shift_mm), wave, self._on_unit_disc(plate_shift_mm))
+        return disc_overlap(
+            self._on_unit_disc(shift_mm), wave, self._on_unit_disc(plate_shift_mm), quick=quick
+        )
 
 
 def sunflower(count: int) -> Array:
@@ -90,7 +99,9 @@ def sunflower(count: int) -> Array:
     return np.stack([radius * np.cos(angle), radius * np.sin(angle)], axis=-1)
 
 
-def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
+def disc_overlap(
+    shift: Array, wave: Array, plate_shift: Array, *, quick: bool = False
+) -> Array:
     """Return the overlap integral of a unit disc, or of the lens that two of them leave.
 
     shift, wave : (n, 2), wave in cycles per unit; plate_shift : (2,), 0 for a thin plate.
@@ -133,7 +144,8 @@ def disc_overlap(shift: Array, wave: Array, plate_shift: Array) -> Array:
             count = max(40, count + 8)  # the discs' corners: no longer smooth, 1e-4 is reached here
         stop = min(stop, start + max(1, _BLOCK // count))
         block = order[start:stop]
-        result[block] = (_chords if thin else _lens_chords)(parts[:, block], count)
+        chords = _lens_chords if not thin else _quick_chords if quick else _chords
+        result[block] = chords(parts[:, block], count)
         start = stop
     return result / (math.pi * share)
 
@@ -152,6 +164,30 @@ def _chords(parts: Array, count: int) -> Array:
     chord *= np.cos((2.0 * math.pi * wave_x)[:, None] * x)
     # Twice: the other half is the point reflection of this one, with the complex conjugate.
     return np.asarray(2.0 * span * ((chord * cosine) @ weights))
+
+
+def _quick_chords(parts: Array, count: int) -> Array:
+    """Return the same in single precision, to 1e-6 and three times as fast."""
+    reach, _, _, wave_x, wave_y = parts
+    single = np.float32
+    nodes, weights = (part.astype(single) for part in gauss_legendre(count))
+    start = np.arcsin(reach)
+    span = 0.5 * math.pi - start
+    angle = span.astype(single)[:, None] * nodes
+    angle += start.astype(single)[:, None]
+    cosine = np.cos(angle)
+    x = np.sin(angle, out=angle)
+    x -= reach.astype(single)[:, None]
+    x *= (2.0 * math.pi * wave_x).astype(single)[:, None]
+    chord = np.cos(x, out=x)
+    # sin(turn) / turn times the chord's length 2 cosine; the least turn keeps 0/0 away.
+    turn = cosine * (2.0 * math.pi * np.abs(wave_y)).astype(single)[:, None]
+    turn += single(1e-6)
+    chord *= np.sin(turn)
+    chord /= turn
+    chord *= cosine
+    chord *= cosine
+    return np.asarray(4.0 * span * (chord @ weights))
 
 
 def _lens_chords(parts: Array, count: int) -> Array:
@@ -222,7 +258,9 @@ class Slit:
             np.prod(self._sides(np.asarray(plate_shift_mm)), axis=-1) / (self.right_mm * self.up_mm)
         )
 
-    def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Array:
+    def otf(
+        self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
+    ) -> Array:
         """A rectangle's overlap is a rectangle, whose Fourier transform is two sinc."""
         left = self._sides(np.asarray(plate_shift_mm))
         if not left.all():

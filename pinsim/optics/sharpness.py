@@ -321,10 +321,11 @@ def light_ray_otf(
     plate_thickness_mm: float,
     light: Light,
     distance_mm: float = math.inf,
+    quick: bool = False,
 ) -> NDArray[np.complex128]:
     """Return the transfer function of one chief ray averaged over a light.
 
-    frequency : (n, 2). Returns (n,); of a mirrored opening it is real, negative where light and dark
+    frequency : (n, 2). quick : an error of 1e-6 is allowed. Returns (n,); of a mirrored opening it is real, negative where light and dark
     change places.
     """
     total = np.zeros(len(frequency), np.complex128)
@@ -336,6 +337,7 @@ def light_ray_otf(
             plate_thickness_mm=plate_thickness_mm,
             distance_mm=distance_mm,
             wavelength_nm=float(wavelength),
+            quick=quick,
         )
     return total
 

@@ -129,7 +129,9 @@ class Traced:
         flat = np.where(flat < 1e-5, 0.0, np.minimum(flat, 1.0))
         return np.asarray(flat.reshape(apart.shape[:-1]))
 
-    def otf(self, shift_mm: Array, curvature: Array, plate_shift_mm: Array) -> Complex:
+    def otf(
+        self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
+    ) -> Complex:
         """Read the autocorrelation at the shifts wanted, or transform the mere shadow.
 
         The autocorrelation turns steepest * width times per mm of shift, so that is how fine its grid

@@ -182,6 +182,7 @@ class _Sampler:
             plate_thickness_mm=camera.plate_thickness_mm,
             light=light or self._light,
             distance_mm=distance,
+            quick=True,
         )
         table: Values = values.real if camera.opening.mirrored else values
         return table.reshape(self._radii.size, directions)

@@ -144,6 +144,7 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tup
                 plate_thickness_mm=0.0,
                 light=channel.light.condensed(_FEW_WAVELENGTHS),
                 distance_mm=distance_mm,
+                quick=True,
             )
             strongest = np.maximum(strongest, np.abs(values).reshape(radius.size, -1).max(axis=1))
         here = float(radius[np.flatnonzero(strongest > NEGLIGIBLE_OTF)[-1]])
