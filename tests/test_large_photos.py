@@ -9,7 +9,6 @@ import sys
 
 import numpy as np
 import pytest
-from photo_files import STORED, light_of
 from PIL import Image
 
 from pinsim import SceneError
@@ -101,43 +100,3 @@ def test_a_jpeg_cut_short_anywhere_is_refused(tmp_path, progressive):
     path.write_bytes(whole[:-2])
     with pytest.raises(SceneError, match=r"the picture's end is missing"):
         read_photo(path)
-
-
-@pytest.mark.parametrize("orientation", [1, 6])
-@pytest.mark.parametrize("shrink", [1, 2, 4, 8])
-def test_a_shrunk_jpeg_knows_its_true_size_and_angle(tmp_path, shrink, orientation):
-    path = tmp_path / "photo.jpg"
-    exif = Image.Exif()
-    exif[ORIENTATION] = orientation
-    exif.get_ifd(EXIF_DIRECTORY)[FOCAL_LENGTH_35MM] = 24
-    stored = np.ascontiguousarray(STORED[orientation](smooth()))
-    Image.fromarray(stored).save(path, quality=95, subsampling=0, exif=exif.tobytes())
-    photo = read_photo(path, shrink=shrink)
-    assert photo.full_shape == (240, 360)
-    assert photo.shape == (240 // shrink, 360 // shrink)
-    # 24 mm equivalent across the long side of 3:2 (see test_exif_view).
-    assert photo.view_deg == pytest.approx(73.7398, abs=1e-3)
-    blocks = light_of(smooth()).reshape(240 // shrink, shrink, 360 // shrink, shrink, 3)
-    np.testing.assert_allclose(photo.linear(), blocks.mean(axis=(1, 3)), atol=0.02)
-
-
-def test_an_odd_size_shrinks_to_the_next_whole_pixel(tmp_path):
-    path = tmp_path / "photo.jpg"
-    Image.fromarray(smooth(101, 67)).save(path)
-    photo = read_photo(path, shrink=2)
-    assert photo.shape == (51, 34)
-    assert photo.full_shape == (101, 67)
-
-
-def test_other_kinds_are_read_whole(tmp_path):
-    path = tmp_path / "photo.png"
-    Image.fromarray(smooth()).save(path)
-    assert read_photo(path, shrink=4).shape == (240, 360)
-
-
-@pytest.mark.parametrize("shrink", [0, 3, 16])
-def test_an_impossible_shrink_is_refused(tmp_path, shrink):
-    path = tmp_path / "photo.png"
-    Image.fromarray(smooth()).save(path)
-    with pytest.raises(SceneError, match=r"shrink is .*; it must be 1, 2, 4 or 8"):
-        read_photo(path, shrink=shrink)

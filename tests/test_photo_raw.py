@@ -63,7 +63,7 @@ def test_orientation_is_honoured_once(tmp_path, orientation):
     stored = np.ascontiguousarray(STORED[orientation](patches()))
     photo = read_photo(dng(tmp_path / "photo.dng", stored, orientation=orientation))
     np.testing.assert_allclose(middles(photo.linear()), middles(patches()), **CLOSE)
-    assert photo.full_shape == (120, 160)
+    assert photo.shape == (120, 160)
 
 
 def test_colour_goes_by_the_cameras_own_matrix(tmp_path):

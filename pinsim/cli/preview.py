@@ -57,11 +57,13 @@ def command(
         load_scene,
         make_camera,
     )
+    from pinsim.cli.memory import keep_freed_memory
     from pinsim.cli.show import progress_bar, tell
     from pinsim.errors import DesignError
     from pinsim.files import EXPOSURE_SUFFIXES, check_bits, check_target, keep_inputs
     from pinsim.samples import PREFIX
 
+    keep_freed_memory()
     seed = given["seed"]
     if seed is not None and not 0 <= seed < 2**63:
         raise DesignError(f"--seed is {seed}; it must be a whole number from 0 on.")

@@ -158,9 +158,7 @@ def _inverse_distance(
     beyond = "extend" if scene.beyond == "extend" else "mirror"
     across = np.rint(column).astype(np.intp)
     across = np.mod(across, columns) if around else fold(across, columns, beyond)
-    inverse = scene.distance.inverse_mm(
-        fold(np.rint(row).astype(np.intp), rows, beyond), across
-    )
+    inverse = scene.distance.inverse_mm(fold(np.rint(row).astype(np.intp), rows, beyond), across)
     if scene.distance.along == "axis":
         return inverse
     ahead = cosine > _LEAST_AHEAD
@@ -206,9 +204,7 @@ def panorama_light(scene: Scene, plan: RenderPlan) -> Float:
     return light
 
 
-def _lay(
-    sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice], light: Float
-) -> None:
+def _lay(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice], light: Float) -> None:
     """Lay one square of the film, in quarters if the scale varies much over it."""
     scales = _scales(sphere, plan, square)
     if scales is None:
@@ -304,9 +300,7 @@ def _scales(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice]) -> _
     # the ray moves neither, as both directions are across it; their signs do not matter here.
     down = sphere.row_per_rad * np.einsum("nki,ni->nk", moved, north)
     across = sphere.column_per_rad * np.einsum("nki,ni->nk", moved, east)
-    area = np.maximum(
-        np.abs(down[:, 0] * across[:, 1] - down[:, 1] * across[:, 0]), 1e-12
-    )
+    area = np.maximum(np.abs(down[:, 0] * across[:, 1] - down[:, 1] * across[:, 0]), 1e-12)
     # A film wave f is the photo wave (J transposed)^-1 f; the longest of all f of one length.
     waves_row = _PASS * np.hypot(across[:, 0], across[:, 1]) / area
     waves_column = _PASS * np.hypot(down[:, 0], down[:, 1]) / area
@@ -336,9 +330,7 @@ def _spaced(axis: Array, part: slice, step_mm: float) -> Array:
     )
 
 
-def _read(
-    sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice], scales: _Scales
-) -> Float:
+def _read(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice], scales: _Scales) -> Float:
     """Return the light at all points of a square and its halo, (rows, columns, 3)."""
     surface = plan.camera.surface
     up, right = (
@@ -430,7 +422,6 @@ def _spline(place: Array) -> Float:
 def _grid(sphere: _Sphere, scales: _Scales, height: Array, row: Array, column: Array) -> _Grid:
     """Bring the part of the photo that a square's points look at to the square's scale."""
     from scipy.fft import next_fast_len
-    from scipy.ndimage import spline_filter1d
 
     # Down the meridians.
     step_row = max(1.0 / (_PER_PERIOD * scales.row), _LEAST_STEP_PX)
@@ -458,9 +449,7 @@ def _grid(sphere: _Sphere, scales: _Scales, height: Array, row: Array, column: A
     if turn_px:
         wrap = np.arange(-_SPLINE_REACH, thinned + _SPLINE_REACH) % thinned
         lines = lines[:, wrap]
-    lines = np.asarray(
-        spline_filter1d(lines, 3, axis=0, output=np.float32, mode="mirror"), np.float32
-    )
+    _to_knots(lines)
     return _Grid(
         coefficients=lines,
         first=(first_row, float(first_column)),
@@ -469,9 +458,24 @@ def _grid(sphere: _Sphere, scales: _Scales, height: Array, row: Array, column: A
     )
 
 
-def _down(
-    sphere: _Sphere, rows: Array, period: float, first_column: int, length: int
-) -> Float:
+def _to_knots(lines: Float) -> None:
+    """Turn values into cubic B-spline coefficients along the first axis, in place.
+
+    The recursive filter of Unser, Aldroubi and Eden (1991), pole sqrt(3) - 2, a row at a time; lines
+    go on as they end.
+    """
+    pole = np.float32(math.sqrt(3.0) - 2.0)
+    lines *= np.float32(6.0)
+    lines[0] /= 1.0 - pole
+    for k in range(1, lines.shape[0]):
+        lines[k] += pole * lines[k - 1]
+    lines[-1] *= -pole / (1.0 - pole)
+    for k in range(lines.shape[0] - 2, -1, -1):
+        np.subtract(lines[k + 1], lines[k], out=lines[k])
+        lines[k] *= pole
+
+
+def _down(sphere: _Sphere, rows: Array, period: float, first_column: int, length: int) -> Float:
     """Return light at photo rows, averaged over periods of rows, (rows.size, length, 3)."""
     reach = math.ceil(HALF_PERIODS * period) + 2
     first = math.floor(float(rows[0])) - reach
@@ -580,9 +584,7 @@ def _along(lines: Float, periods: Array, count: int) -> Float:
         taken = spectrum[:, : wave.size] if plain else spectrum[:, source]
         if not plain and again.any():
             taken = np.where(again[None, :, None], taken.conj(), taken)
-        gain = np.interp(
-            periods[part, None] * (wave / length)[None, :], frequency, left, right=0.0
-        )
+        gain = np.interp(periods[part, None] * (wave / length)[None, :], frequency, left, right=0.0)
         gain *= knots
         taken = taken * gain.astype(np.float32)[..., None]
         result[part] = fft.irfft(taken, n=count, axis=1)

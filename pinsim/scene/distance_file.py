@@ -118,7 +118,7 @@ class MapFile:
         if panorama is not None and self.kind == "disparity":
             raise self._error(": disparities belong to a flat photo, not to a panorama.")
         numbers = read_numbers(self.path)
-        check_aspect(self.path, numbers.shape, photo.full_shape, "map")
+        check_aspect(self.path, numbers.shape, photo.shape, "map")
         own = numbers.shape
         notes = []
         focal_px = self.focal_length_px or focal_length_px * own[1] / photo.shape[1]
@@ -133,10 +133,10 @@ class MapFile:
         del holes
         if codes.shape != photo.shape:
             codes, table = fitted(codes if table is None else table[codes], photo), None
-        if own != photo.full_shape:
+        if own != photo.shape:
             notes.append(
                 f"the distance map of {own[1]} x {own[0]} px was brought to the photo's "
-                f"{photo.full_shape[1]} x {photo.full_shape[0]} px"
+                f"{photo.shape[1]} x {photo.shape[0]} px"
             )
         along: Along = self.along or ("axis" if panorama is None else "ray")
         if panorama is not None and along == "axis":

@@ -118,7 +118,7 @@ class Ground:
     def _horizon(self, photo: Photo) -> float:
         share = 0.5 if self.horizon_share is None else self.horizon_share
         if self.horizon_px is not None:
-            share = self.horizon_px / photo.full_shape[0]
+            share = self.horizon_px / photo.shape[0]
         return share * photo.shape[0]
 
     def _notes(self, made: DistanceMap) -> tuple[str, ...]:

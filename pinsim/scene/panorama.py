@@ -131,7 +131,7 @@ def place_across(
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class ToldPlace:
-    """What people say of a panorama's place, in the file's own pixels; None is not said.
+    """What people say of a panorama's place, in the picture's pixels; None is not said.
 
     where : where it stands, for error texts.
     """
@@ -188,7 +188,6 @@ def told_place(table: Table) -> ToldPlace | None:
 
 def settled_place(
     shape: tuple[int, int],
-    file_shape: tuple[int, int],
     *,
     view_deg: float | None,
     told: ToldPlace | None,
@@ -197,14 +196,14 @@ def settled_place(
 ) -> tuple[PanoramaPlace, str]:
     """Return where a panorama lies, by what comes first, and a note where one is due.
 
-    shape : of the photo as read; file_shape : of the file's picture, whose pixels `told` counts.
-    A told place comes first, then the angle of view, then the file's own fields, then that the
-    picture is a whole sphere. Raises SceneError, in one line, when none of them settles it.
+    shape : rows and columns of the photo. A told place comes first, then the angle of view, then the
+    file's own fields, then that the picture is a whole sphere. Raises SceneError, in one line, when
+    none of them settles it.
     """
     pose = from_file or full_sphere(shape)
     note = ""
     if told is not None and told.tells_full:
-        place = _by_full_size(shape, file_shape, told)
+        place = _by_full_size(shape, told)
     elif view_deg is not None or (told is not None and told.horizon_px is not None):
         if view_deg is None:
             raise SceneError(
@@ -212,8 +211,6 @@ def settled_place(
                 'edge to its right too: horizontal_view = "200 deg".'
             )
         horizon = told.horizon_px if told is not None else None
-        if horizon is not None:
-            horizon *= shape[0] / file_shape[0]
         place = place_across(shape, view_deg, horizon)
         wrong = place.refuse(shape)
         if horizon is not None and wrong and told is not None:
@@ -229,10 +226,10 @@ def settled_place(
         return full_sphere(shape), ""
     else:
         raise SceneError(
-            f"{name} is {file_shape[1]} x {file_shape[0]} pixels: a whole sphere is twice as wide as "
-            "high, and nothing in the file tells which part this is. Say how wide it sees (--view 200deg, "
-            "its middle on the horizon), or where it lies in the full panorama, in a scene file: "
-            "[panorama] full_width = 12000, left = 0, top = 1500."
+            f"{name} is {shape[1]} x {shape[0]} pixels: a whole sphere is twice as wide as "
+            "high, and nothing in the file tells which part this is. Say how wide it sees "
+            "(--view 200deg, its middle on the horizon), or where it lies in the full panorama, in a "
+            "scene file: [panorama] full_width = 12000, left = 0, top = 1500."
         )
     return (
         replace(
@@ -242,9 +239,7 @@ def settled_place(
     )
 
 
-def _by_full_size(
-    shape: tuple[int, int], file_shape: tuple[int, int], told: ToldPlace
-) -> PanoramaPlace:
+def _by_full_size(shape: tuple[int, int], told: ToldPlace) -> PanoramaPlace:
     wide, high = told.full_width_px, told.full_height_px
     if wide is None and high is None:
         raise SceneError(
@@ -255,8 +250,8 @@ def _by_full_size(
     assert wide is not None
     assert high is not None
     for key, start, size, whole in (
-        ("left", told.left_px, file_shape[1], wide),
-        ("top", told.top_px, file_shape[0], high),
+        ("left", told.left_px, shape[1], wide),
+        ("top", told.top_px, shape[0], high),
     ):
         if start is None and abs(whole - size) > SHAPE_SLIP_PX:
             raise SceneError(
@@ -269,16 +264,10 @@ def _by_full_size(
         left_px=told.left_px or 0.0,
         top_px=told.top_px or 0.0,
     )
-    wrong = place.refuse(file_shape)
+    wrong = place.refuse(shape)
     if wrong:
         raise SceneError(f"{told.where}: this cannot be: {wrong}.")
-    down, across = (size / whole for size, whole in zip(shape, file_shape, strict=True))
-    return PanoramaPlace(
-        full_width_px=wide * across,
-        full_height_px=high * down,
-        left_px=place.left_px * across,
-        top_px=place.top_px * down,
-    )
+    return place
 
 
 # Yaw, pitch and roll of a camera that looks around in a panorama.

@@ -26,7 +26,6 @@ class Photo:
     view_deg : the horizontal angle of view that the file itself tells, if it does; view_note : why
     what it tells cannot be used. notes : what was decided at the door, for people.
     clips : whether the file had a highest code, so that what was brighter than it is lost.
-    true_shape : rows and columns of the file's picture, when the photo was read smaller.
     lift : what brightens clipped parts, if that was asked for.
     panorama : where the file says it lies on the sphere, if it says it is a panorama.
     """
@@ -38,7 +37,6 @@ class Photo:
     view_note: str = ""
     notes: tuple[str, ...] = ()
     clips: bool = False
-    true_shape: tuple[int, int] | None = None
     lift: HighlightLift | None = None
     panorama: PanoramaPlace | None = None
 
@@ -46,11 +44,6 @@ class Photo:
     def shape(self) -> tuple[int, int]:
         """Rows and columns."""
         return self.codes.shape[0], self.codes.shape[1]
-
-    @property
-    def full_shape(self) -> tuple[int, int]:
-        """Rows and columns of the file's own picture, upright, whatever size was read."""
-        return self.true_shape or self.shape
 
     def linear(
         self, rows: slice = slice(None), columns: slice = slice(None)

@@ -74,6 +74,6 @@ class Planes:
 
 def _read_mask(path: Path, photo: Photo) -> NDArray[np.bool_]:
     grey = read_plain(path, "mask")
-    check_aspect(path, grey.shape, photo.full_shape, "mask")
+    check_aspect(path, grey.shape, photo.shape, "mask")
     middle = np.iinfo(grey.dtype).max // 2 if np.issubdtype(grey.dtype, np.integer) else 0.5
     return at_size(grey > middle, photo.shape)

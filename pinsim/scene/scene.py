@@ -306,7 +306,6 @@ def _settle_panorama(plan: dict[str, Any], photo: Photo) -> tuple[PanoramaPlace 
         return None, []  # which the Scene refuses
     place, note = settled_place(
         photo.shape,
-        photo.full_shape,
         view_deg=view,
         told=told,
         from_file=photo.panorama,

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from pinsim.colour import srgb_table
 from pinsim.scene.door.profiles import through_profile
-from pinsim.scene.door.upright import SIDEWAYS, orientation_note, upright
+from pinsim.scene.door.upright import orientation_note, upright
 from pinsim.scene.exif_view import FocalLength, horizontal_view_deg
 from pinsim.scene.gamut import LUMINANCE, OUTSIDE, bring_in, lowest
 from pinsim.scene.highlights import LIFT_HINT, clipped_share, sampled
@@ -32,8 +32,7 @@ class Decoded:
     codes : (rows, columns[, channels]) as stored. mode : L, LA, RGB, RGBA (not premultiplied) or CMYK.
     orientation : what is left to turn. profile : ICC. decode, to_srgb : as in Photo, where the kind of
     file settles it; floats are linear light. focal : the focal length in stored pixels. clips : whether
-    the highest code is white and more was lost. stored_shape : rows and columns of the stored picture
-    where fewer were read. xmp : the packet of its metadata.
+    the highest code is white and more was lost. xmp : the packet of its metadata.
     """
 
     codes: NDArray[Any]
@@ -44,7 +43,6 @@ class Decoded:
     to_srgb: Float | None = None
     focal: FocalLength = field(default_factory=FocalLength)
     clips: bool = True
-    stored_shape: tuple[int, int] | None = None
     xmp: bytes | str | None = None
     notes: tuple[str, ...] = ()
 
@@ -72,9 +70,6 @@ def finished(read: Decoded, path: Path) -> Photo:
         codes, note = _sound(codes, to_srgb, path)
         notes.append(note)
         to_srgb = None
-    rows, columns = read.stored_shape or read.codes.shape[:2]
-    if isinstance(read.orientation, int) and read.orientation in SIDEWAYS:
-        rows, columns = columns, rows
     focal_px = read.focal.px
     panorama, panorama_notes = panorama_of(read.xmp, (codes.shape[0], codes.shape[1]))
     notes += panorama_notes
@@ -82,10 +77,9 @@ def finished(read: Decoded, path: Path) -> Photo:
         codes=codes,
         decode=decode,
         to_srgb=to_srgb,
-        view_deg=horizontal_view_deg(focal_px, columns) if focal_px else None,
+        view_deg=horizontal_view_deg(focal_px, codes.shape[1]) if focal_px else None,
         view_note=read.focal.note,
         clips=read.clips and not floating,
-        true_shape=(rows, columns),
         panorama=panorama,
     )
     if not floating:

@@ -24,7 +24,6 @@ from pinsim.scene.door.upright import ORIENTATION, SIDEWAYS
 from pinsim.scene.exif_view import FocalLength, told_focal_length
 
 EXIF_DIRECTORY = 0x8769
-SHRINKS = (1, 2, 4, 8)  # what JPEG's own blocks of 8 x 8 can be decoded at
 
 _PNG_MODES = {1: "L", 2: "LA", 3: "RGB", 4: "RGBA"}
 # A marker of JPEG that ends the compressed pixels: neither a stuffed byte nor a restart (T.81, B.1.1).
@@ -33,26 +32,21 @@ _JPEG_SCAN, _JPEG_END = 0xDA, 0xD9
 _opening = threading.Lock()
 
 
-def read_picture(path: Path, shrink: int) -> Decoded:
-    """Read an 8-bit picture, a JPEG at 1/shrink of its size."""
+def read_picture(path: Path) -> Decoded:
+    """Read an 8-bit picture."""
     with opened(path, "photo") as image:
         focal = focal_length(image)
-        stored = image.size[1], image.size[0]
         jpeg, drawn = image.format in {"JPEG", "MPO"}, False
         profile = image.info.get("icc_profile")
         codes: NDArray[Any]
-        if jpeg and shrink == 1 and image.mode in {"L", "RGB"}:
+        if jpeg and image.mode in {"L", "RGB"}:
             mode, orientation = image.mode, orientation_left(image)
             codes = _jpeg_codes(path)
         else:
-            if jpeg and shrink > 1:
-                image.draft(None, (stored[1] // shrink or 1, stored[0] // shrink or 1))
             image.load()
             orientation = orientation_left(image)
             drawn = image.mode in {"1", "P", "PA"}
             codes, mode = _eight_bit(image, bool(profile), path)
-            if image.format == "TIFF":
-                stored = image.size[1], image.size[0]  # turned while it was loaded
         xmp = xmp_of(image)
     return Decoded(
         codes=codes,
@@ -61,7 +55,6 @@ def read_picture(path: Path, shrink: int) -> Decoded:
         profile=profile,
         focal=focal,
         clips=not drawn,  # the white of a drawing is paper, not a burnt-out lamp
-        stored_shape=stored,
         xmp=xmp,
     )
 
