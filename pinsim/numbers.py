@@ -2,7 +2,8 @@
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
+from typing import Any
 
 import numpy as np
 
@@ -11,6 +12,7 @@ from pinsim.best import CONTRASTS, FrameBest, FrameDetail, Tolerance, light_for
 from pinsim.camera import Camera
 from pinsim.classical import Classical, classical_holes
 from pinsim.exposure import metered_time_s
+from pinsim.exposure.times import light_share
 from pinsim.optics.sharpness import detail_anywhere
 from pinsim.tools import CAUTION, Tool, how_to_make, tools_around
 
@@ -173,7 +175,7 @@ def figures(
         mean_wavelength_nm=light.mean_nm,
         cutoff_cycles_mm=camera.hole.greatest_mm / (light.mean_nm * 1e-6 * camera.focal_length_mm),
         corner_deg=camera.corner_deg,
-        corner_falloff_stops=_stops_below(_light_share(camera, *camera.far_corner)),
+        corner_falloff_stops=_stops_below(light_share(camera, *camera.far_corner)),
         distances=tuple(_at_distance(camera, light, one, best=best) for one in distances_mm),
         times_s=tuple((ev, metered_time_s(camera, ev)) for ev in USUAL_EV),
         places=_places(camera, light, distances_mm[0]) if best else (),
@@ -181,11 +183,25 @@ def figures(
     )
 
 
-def _light_share(camera: Camera, across: float, up: float) -> float:
-    """Return the light at a place in the frame over that on the axis."""
-    rays = camera.rays_to((across, up))
-    clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
-    return float(rays.falloff[0] * clear[0])
+def plain_figures(result: Figures) -> dict[str, Any]:
+    """Return figures as JSON takes them; infinity has no number there and becomes a word."""
+
+    def clean(item: Any) -> Any:
+        if isinstance(item, dict):
+            return {key: clean(one) for key, one in item.items()}
+        if isinstance(item, list | tuple):
+            return [clean(one) for one in item]
+        if isinstance(item, float) and math.isinf(item):
+            return "infinity"
+        return item
+
+    plain: dict[str, Any] = clean(asdict(result))
+    plain["times_s"] = [{"ev": ev, "time_s": time} for ev, time in plain["times_s"]]
+    if result.advice is not None:
+        plain["advice"]["best_hole_mm"] = result.advice.best_hole_mm
+        plain["advice"]["tolerance"]["smaller_share"] = result.advice.tolerance.smaller_share
+        plain["advice"]["tolerance"]["larger_share"] = result.advice.tolerance.larger_share
+    return plain
 
 
 def _stops_below(share: float) -> float:
@@ -269,6 +285,13 @@ def outwards(point_mm: Vector) -> Vector:
     return (point_mm[0] / far, point_mm[1] / far) if far > 1e-9 else (1.0, 0.0)
 
 
+def places(
+    camera: Camera, *, distance_mm: float = math.inf, wavelength_nm: float | None = None
+) -> tuple[AtPlace, ...]:
+    """Return light and sharpness at the places that stand for a frame, without looking for a best hole."""
+    return _places(camera, light_for(wavelength_nm, camera.material), distance_mm)
+
+
 def _places(camera: Camera, light: optics.Light, distance_mm: float) -> tuple[AtPlace, ...]:
     found = []
     for name, place in usual_places(camera).items():
@@ -284,7 +307,7 @@ def _places(camera: Camera, light: optics.Light, distance_mm: float) -> tuple[At
                 right_mm=point[0],
                 up_mm=point[1],
                 field_deg=math.degrees(math.acos(min(ahead, 1.0))),
-                falloff_stops=_stops_below(_light_share(camera, *place)),
+                falloff_stops=_stops_below(light_share(camera, *place)),
                 right_cycles_mm=right,
                 up_cycles_mm=up,
                 tangential_cycles_mm=tangential,

@@ -10,6 +10,7 @@ ROOT = Path(__file__).resolve().parents[1] / "pinsim"
 
 # Lowest first; a room or file may use what stands above it in this table, never below or beside.
 FLOORS = (
+    {"threads"},
     {"errors", "progress", "colour", "optics"},
     {"units", "tables", "samples", "files", "classical", "tools"},
     {"material"},
@@ -18,7 +19,9 @@ FLOORS = (
     {"camera"},
     {"best", "exposure"},
     {"against_round", "numbers", "render"},
+    {"batch"},
     {"sheets"},
+    {"live"},
     {"cli"},
     {"__main__"},
 )
@@ -26,9 +29,11 @@ FLOOR = {name: number for number, names in enumerate(FLOORS) for name in names}
 
 # Who may load what, besides numpy and the standard library. optics is pure mathematics.
 MAY_LOAD = {
+    "batch": {"PIL", "dask", "distributed"},
     "optics": {"scipy"},
     "scene": {"OpenEXR", "PIL", "imagecodecs", "pillow_heif", "rawpy", "scipy", "skimage", "tifffile"},
     "files": {"PIL", "imagecodecs", "imageio"},
+    "live": {"PIL", "starlette", "uvicorn"},
     "render": {"scipy", "skimage"},
     "sheets": {"PIL", "reportlab"},
     "tracing": {"scipy", "skimage"},

@@ -50,7 +50,7 @@ def command(
     CAMERA is a design file or sample:NAME; or type it: --hole 0.30mm --focal-length 60mm --film 6x6.
     """
     from pinsim.cli.designs import input_files, make_camera
-    from pinsim.numbers import USUAL_DISTANCES_MM, figures
+    from pinsim.numbers import USUAL_DISTANCES_MM, figures, plain_figures
 
     if plot is not None:  # before any work is done
         from pathlib import Path
@@ -69,7 +69,7 @@ def command(
     distances = distances_mm or USUAL_DISTANCES_MM
     result = figures(design, distances_mm=distances, wavelength_nm=wavelength_nm)
     if as_json:
-        click.echo(json.dumps(_plain(result), indent=2))
+        click.echo(json.dumps(plain_figures(result), indent=2))
     else:
         _tables(result)
     if plot is not None:
@@ -78,28 +78,6 @@ def command(
         sheet = numbers_plot(design, distance_mm=distances[0], wavelength_nm=wavelength_nm)
         sheet.save(plot, overwrite=overwrite)
         click.echo(f"wrote {plot}", err=as_json)
-
-
-def _plain(value: "Figures") -> Any:
-    """Return figures as JSON takes them; infinity has no number there and becomes a word."""
-    from dataclasses import asdict
-
-    def clean(item: Any) -> Any:
-        if isinstance(item, dict):
-            return {key: clean(one) for key, one in item.items()}
-        if isinstance(item, list | tuple):
-            return [clean(one) for one in item]
-        if isinstance(item, float) and math.isinf(item):
-            return "infinity"
-        return item
-
-    plain = clean(asdict(value))
-    plain["times_s"] = [{"ev": ev, "time_s": time} for ev, time in plain["times_s"]]
-    if value.advice is not None:
-        plain["advice"]["best_hole_mm"] = value.advice.best_hole_mm
-        plain["advice"]["tolerance"]["smaller_share"] = value.advice.tolerance.smaller_share
-        plain["advice"]["tolerance"]["larger_share"] = value.advice.tolerance.larger_share
-    return plain
 
 
 def _frame(figures: Any) -> str:
@@ -123,7 +101,7 @@ def _tables(figures: "Figures") -> None:
     times = ", ".join(f"EV {ev:g}: {format_time(time)}" for ev, time in figures.times_s)
     console.print(
         f"\nMetered times (EV at ISO 100; {figures.material} at its usual speed; "
-        f"no reciprocity correction): {times}"
+        f"no reciprocity correction): {times}. pinsim exposure gives the times to set."
     )
 
 

@@ -11,7 +11,6 @@ from pinsim.exposure.light import LightLevel, read_light
 from pinsim.exposure.times import (
     Time,
     auto_time_s,
-    exposure_note,
     gain_of,
     metered_time_s,
     round_time_s,
@@ -23,7 +22,6 @@ __all__ = [
     "LightLevel",
     "Time",
     "auto_time_s",
-    "exposure_note",
     "gain_of",
     "metered_time_s",
     "read_light",

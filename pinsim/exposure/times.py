@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 from pinsim.errors import DesignError, out_of_range
 from pinsim.exposure.light import LightLevel
-from pinsim.units import EV_RANGE, format_time
+from pinsim.units import EV_RANGE
 
 if TYPE_CHECKING:  # only its face is needed: no need to load what is behind it
     from pinsim.camera import Camera
@@ -45,29 +45,6 @@ def gain_of(camera: "Camera", *, time_s: float | None, ev: float | None) -> floa
     if not EV_RANGE[0] <= ev <= EV_RANGE[1]:
         raise DesignError(out_of_range("ev", ev, "EV", *EV_RANGE))
     return time_s / camera.material.reciprocity.corrected_s(metered_time_s(camera, ev))
-
-
-def exposure_note(camera: "Camera", *, time_s: float, ev: float) -> str:
-    """Return the line that says what a time given is worth, with all it assumes."""
-    metered = metered_time_s(camera, ev)
-    reciprocity = camera.material.reciprocity
-    needed = reciprocity.corrected_s(metered)
-    stops = math.log2(gain_of(camera, time_s=time_s, ev=ev))
-    verdict = (
-        "as needed"
-        if abs(stops) < 0.05
-        else f"{abs(stops):.1f} stops {'over' if stops > 0.0 else 'under'}"
-    )
-    correction = (
-        f"{format_time(needed)} corrected ({reciprocity.label})"
-        if needed > 1.01 * metered
-        else "no reciprocity correction"
-    )
-    doubt = "; outside the data for its correction" if reciprocity.outside_data(metered) else ""
-    return (
-        f"{format_time(time_s)} is {verdict}: {format_time(metered)} metered for EV {ev:g} and "
-        f"{camera.material_name} at ISO {camera.material.speed_iso:g}, {correction}{doubt}"
-    )
 
 
 def light_share(camera: "Camera", across: float, up: float) -> float:

@@ -86,10 +86,32 @@ class Ellipse:
         self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
     ) -> Array:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
-        wave = (shift_mm @ curvature.T) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm])
-        return disc_overlap(
-            self._on_unit_disc(shift_mm), wave, self._on_unit_disc(plate_shift_mm), quick=quick
+        return self.otf_in_colours(
+            np.ones(1), shift_mm, curvature, plate_shift_mm, quick=quick
+        )[0]
+
+    def otf_in_colours(
+        self,
+        wavelengths_mm: Array,
+        shift: Array,
+        focus: Array,
+        plate_shift_mm: Array,
+        *,
+        quick: bool = False,
+    ) -> Array:
+        """Return the overlap integral in several colours at once, (colours, n).
+
+        shift (n, 2) : of the opening, per mm of wavelength. focus (2, 2) : curvature times wavelength.
+        """
+        wave = (shift @ focus.T) * np.array([0.5 * self.right_mm, 0.5 * self.up_mm])
+        shifts = wavelengths_mm[:, None, None] * self._on_unit_disc(shift)
+        values = disc_overlap(
+            shifts.reshape(-1, 2),
+            np.broadcast_to(wave, shifts.shape).reshape(-1, 2),
+            self._on_unit_disc(plate_shift_mm),
+            quick=quick,
         )
+        return values.reshape(shifts.shape[:2])
 
 
 def sunflower(count: int) -> Array:

@@ -328,6 +328,15 @@ def light_ray_otf(
     frequency : (n, 2). quick : an error of 1e-6 is allowed. Returns (n,); of a mirrored opening it is real, negative where light and dark
     change places.
     """
+    if isinstance(opening, Ellipse) and float(rays.falloff) > 0.0:
+        curves = opening.otf_in_colours(
+            light.wavelengths_nm * 1e-6,
+            frequency @ rays.shift.T,
+            rays.focus(distance_mm),
+            plate_thickness_mm * rays.tangent,
+            quick=quick,
+        )
+        return np.asarray(light.shares @ curves, np.complex128)
     total = np.zeros(len(frequency), np.complex128)
     for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
         total += share * ray_otf(

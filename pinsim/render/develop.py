@@ -17,6 +17,7 @@ from pinsim.colour import encode_8bit, encode_16bit, linear_to_srgb
 from pinsim.render.expose import METERED_LXS, MID_TONE, Exposed
 from pinsim.render.grain import add_grain, add_sensor_noise
 from pinsim.render.printing import print_of
+from pinsim.threads import THREADS
 
 Array = NDArray[np.float64]
 Codes = NDArray[np.unsignedinteger[Any]]
@@ -155,7 +156,7 @@ def _taken(
         for layer, table in enumerate(tables):
             result[rows, :, layer] = table[index[..., layer]]
 
-    with ThreadPoolExecutor(2) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         list(pool.map(read, range(0, values.shape[0], strip)))
     return result
 

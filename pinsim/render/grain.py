@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from scipy import fft, special
 
 from pinsim.material import Grain, Sensor
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 
@@ -34,7 +35,7 @@ def noise_field(
         rows, columns = (fft.fftfreq(shape[0]), fft.rfftfreq(shape[1]))
         square = rows[:, None] ** 2 + columns[None, :] ** 2
         keep = np.exp(-2.0 * (math.pi * reach_px) ** 2 * square).astype(np.float32)
-        field = fft.irfft2(fft.rfft2(field, workers=2) * keep, s=shape, workers=2)
+        field = fft.irfft2(fft.rfft2(field, workers=THREADS) * keep, s=shape, workers=THREADS)
     field -= field.mean()
     fine = grain.sigma_density / math.sqrt(_seen_through_spot(grain.correlation_um))
     field *= np.float32(fine * math.sqrt(math.pi) * _SPOT_UM / pitch_um)

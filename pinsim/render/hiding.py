@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from pinsim.optics.falloff import lens_share
 from pinsim.render.project import FilmView
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 Array = NDArray[np.float64]
@@ -36,7 +37,7 @@ WIDEST_STRIP_PX = 12
 MIXED_PX = 2
 EYES_PER_STRIP = 1.5
 FEWEST_EYES, MOST_EYES = 48, 160
-_THREADS = 2
+_PARTS = 2  # whatever the threads: the order of a sum decides its last bit
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -91,8 +92,8 @@ def hide(view: FilmView, exposure: Float) -> Hidden:
     strip_px = (strip.scale.max() - strip.scale.min()) * half_mm / pitch_mm
     count = int(np.clip(EYES_PER_STRIP * strip_px**2, FEWEST_EYES, MOST_EYES))
     eyes = plan.camera.opening.eyes_mm(count)
-    halves = [eyes[k::_THREADS] for k in range(_THREADS)]
-    with ThreadPoolExecutor(_THREADS) as pool:
+    halves = [eyes[k::_PARTS] for k in range(_PARTS)]
+    with ThreadPoolExecutor(THREADS) as pool:
         found = list(pool.map(lambda some: _look(strip, some, scale.shape, jump), halves))
     light_change, cover_change, revealed = (
         np.add.reduce(parts) / np.float32(len(eyes)) for parts in zip(*found, strict=True)
@@ -337,7 +338,7 @@ def _softened(change: Float, view: FilmView, scale: float, eyes: int) -> Float:
         spectrum *= np.interp(at, radius, curve).astype(np.float32)
         result[number] = fft.irfft2(spectrum, s=(rows, columns))
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         list(pool.map(soften, range(len(change))))
     return result
 

@@ -15,10 +15,10 @@ from numpy.typing import NDArray
 from pinsim.camera import Camera
 from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
+from pinsim.threads import THREADS
 
 Array = NDArray[np.float64]
 
-_THREADS = 2
 _TABLE = 1 << 16  # steps along a radius: reading the nearest errs by less than 1e-4
 _STRIP = 64  # film rows at once: they stay in the processor's cache
 
@@ -95,6 +95,6 @@ def illuminate(view: FilmView) -> FilmView:
         )
         return int(np.count_nonzero(share[framed, inside_columns] <= 0.0))
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         unlit = sum(pool.map(dim, range(0, up_mm.size, _STRIP)))
     return replace(view, unlit_share=unlit / (plan.shape[0] * plan.shape[1]))

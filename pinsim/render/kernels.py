@@ -24,6 +24,7 @@ from pinsim.camera import Camera
 from pinsim.material import Channel
 from pinsim.optics import ChiefRays, Light
 from pinsim.optics.sharpness import light_ray_otf
+from pinsim.threads import THREADS
 
 Array = NDArray[np.float64]
 Values = NDArray[np.inexact[Any]]  # real where the opening is its own mirror image
@@ -53,7 +54,6 @@ TRACED_CELLS = 72
 
 _AROUND = 12 * DIRECTIONS  # fine directions over a full turn
 _COUNTS = (0, 1, 2, 3, 4, 5, 6, 8, 10, 12, 15, 19, 24, 30, 38)
-_THREADS = 2
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -242,7 +242,7 @@ def prepare(
         if weights.sum() > 1e-6
     ]
     lights = [Light(wavelengths_nm=job[3], shares=job[4]) for job in jobs]
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         few = ROUGH_WAVELENGTHS if rough else FEW_WAVELENGTHS
         sampled = list(pool.map(lambda light: _sampled(camera, nodes, radii, light, few), lights))
     frame_mm = max(u[1] - u[0], v[1] - v[0], 0.1 * z)

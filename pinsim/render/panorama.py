@@ -29,12 +29,12 @@ from pinsim.render.resample import (
     response,
 )
 from pinsim.scene import DistanceMap, Scene
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
-_THREADS = 2
 _SQUARE = 256  # film pixels along a square's side at first
 _LEAST_SQUARE = 32
 # Film pixels around a square that its kernel reaches.
@@ -43,14 +43,16 @@ _HALO = math.ceil(HALF_PERIODS / ALIAS_FREE)
 _PASS = 0.5
 # The resampling kernel's response is 1 up to this share of its cut-off, and has ended at _END.
 _FLAT, _END = 0.75, 1.25
-# Grid points for each period of the finest wave that must come through: splines read it to 2 %
-# there, where the film's kernel leaves nothing, and to 1e-3 at half its frequency.
-_PER_PERIOD = 4.0
+# Grid points for each period of the finest wave that must come through: splines read it to 3e-3 there,
+# and of what the photo's kernel lets through beyond, they fold back less.
+_PER_PERIOD = 6.0
 _LEAST_STEP_PX = 1.0 / 3.0  # of that grid, in photo pixels; a photo holds nothing finer
 # Of points read for each film pixel, along each side.
 _LEAST_READ, _MOST_READ = 2, 5
 # A square whose scale varies more than this is quartered.
 _EVEN = 1.5
+_SAMPLES = 17  # of a square's scale, along each side
+_POLE_FINER = 3.0
 _SPLINE_REACH = 8  # grid points beyond which a spline has forgotten its border
 _POLE_WAVES = 3.0  # around a pole, waves that reach a point however near it is
 _STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
@@ -198,7 +200,7 @@ def panorama_light(scene: Scene, plan: RenderPlan) -> Float:
         for left in range(0, plan.padded[1], _SQUARE)
         for width in (min(_SQUARE, plan.padded[1] - left),)
     ]
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for _ in pool.map(lay, squares):
             pass
     return light
@@ -217,18 +219,18 @@ def _lay(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice], light: 
                 _lay(sphere, plan, (down, across), light)
         return
     dense = _read(sphere, plan, square, scales)
-    down, across = (
+    blocks = [
         _film_blocks(size, count)
         for size, count in zip((height, width), scales.points, strict=True)
-    )
+    ]
     tall = np.empty((height, *dense.shape[1:]), np.float32)
-    for block in down:
+    for block in blocks[0]:
         part = dense[block.take]
         tall[block.to] = (block.weights @ part.reshape(part.shape[0], -1)).reshape(
             -1, *dense.shape[1:]
         )
     wide = np.ascontiguousarray(tall.swapaxes(0, 1))
-    for block in across:
+    for block in blocks[1]:
         part = wide[block.take]
         done = (block.weights @ part.reshape(part.shape[0], -1)).reshape(-1, height, 3)
         to = slice(square[1].start + block.to.start, square[1].start + block.to.stop)
@@ -305,6 +307,13 @@ def _scales(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice]) -> _
     waves_row = _PASS * np.hypot(across[:, 0], across[:, 1]) / area
     waves_column = _PASS * np.hypot(down[:, 0], down[:, 1]) / area
     row, column = float(waves_row.max()), float(waves_column.max())
+    # Around a pole, meridians are averaged one by one, which is not what a disc's mean is; there the
+    # film is read finer, so that its own kernel does the averaging.
+    apart = max(part.stop - part.start + 2 * _HALO for part in square) / (_SAMPLES - 1)
+    turn = float(np.linalg.norm(moved, axis=-1).max())  # radians per film pixel
+    polar = bool(level.min() < 1.5 * apart * turn)
+    if polar:
+        row, column = _POLE_FINER * row, _POLE_FINER * column
     # What the photo's kernel still lets through comes back to the film as J transposed of it, and
     # must not be folded onto what the film's kernel lets through.
     leaves = [min(wave * _END / _FLAT, 0.5 * _END) for wave in (row, column)]
@@ -318,7 +327,7 @@ def _scales(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice]) -> _
         row=row,
         column=column,
         points=(int(counts[1]), int(counts[0])),
-        uneven=uneven if counts.max() > _LEAST_READ else 1.0,
+        uneven=math.inf if polar else uneven if counts.max() > _LEAST_READ else 1.0,
         ahead=math.atan2(float(middle[0]), float(middle[2])),
     )
 
@@ -326,7 +335,7 @@ def _scales(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice]) -> _
 def _spaced(axis: Array, part: slice, step_mm: float) -> Array:
     """Return some coordinates over a part of an axis and its halo."""
     return np.linspace(
-        axis[part.start] - _HALO * step_mm, axis[part.stop - 1] + _HALO * step_mm, 17
+        axis[part.start] - _HALO * step_mm, axis[part.stop - 1] + _HALO * step_mm, _SAMPLES
     )
 
 
@@ -428,7 +437,7 @@ def _grid(sphere: _Sphere, scales: _Scales, height: Array, row: Array, column: A
     period_row = max(1.0, 0.5 * _FLAT / scales.row)
     first_row = float(row.min()) - _SPLINE_REACH * step_row
     count = math.ceil((float(row.max()) - first_row) / step_row) + 1 + _SPLINE_REACH
-    rows = first_row + step_row * np.arange(count)
+    rows = np.asarray(first_row + step_row * np.arange(count, dtype=np.float64))
     # Along each circle of latitude; columns are as wide as its radius.
     radius = np.abs(np.cos((sphere.horizon_row - rows) / sphere.row_per_rad))
     waves = scales.column * radius + _POLE_WAVES / sphere.turn_px
@@ -550,10 +559,10 @@ def _part(sphere: _Sphere, rows: Index, columns: Index) -> Float:
 
 @lru_cache(maxsize=1)
 def _response_table() -> tuple[Array, Float]:
-    """Return the kernel's response at frequencies in cycles per own period; it has ended after."""
-    frequency = np.linspace(0.0, 1.0, 2001)
+    """Return frequencies in cycles per own period and the kernel's response there."""
+    frequency = np.linspace(0.0, 0.8, 1601)
     left = response(frequency)
-    # Beyond its end it is a trace; kept, so that the kernel stays as short as it is.
+    # Beyond its end it is a trace, which is cut off: a photo's plain parts come again at 1.
     return frequency, left.astype(np.float32)
 
 
@@ -577,7 +586,7 @@ def _along(lines: Float, periods: Array, count: int) -> Float:
     # What a cubic spline's knots make of each wave is undone here (Schoenberg's B-splines).
     knots = (count / length) / (2.0 / 3.0 + np.cos(2.0 * np.pi * cycles) / 3.0)
     result = np.empty((lines.shape[0], count, 3), np.float32)
-    rows_at_once = max(1, 2_000_000 // (3 * (length + count)))
+    rows_at_once = max(1, 300_000 // (3 * (length + count)))
     for start in range(0, lines.shape[0], rows_at_once):
         part = slice(start, start + rows_at_once)
         spectrum = fft.rfft(lines[part], axis=1)

@@ -35,7 +35,7 @@ HEADROOM = 1.06
 # this share of the difference between the true and the imagined surroundings.
 TAIL_SHARE = 3e-3
 LARGE_TAIL_SHARE = 6e-3
-LARGE_FRAME_PX = 800_000
+LARGE_FRAME_PX = 500_000
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
 # Round holes whose diameters lie within this step share margins and fields; the grid's pitch in steps.
@@ -234,7 +234,11 @@ def plan_for(
             f"drawn at {film.width_mm / pitch:.0f} px, finer detail is averaged"
         )
     if averaged_px is not None:
-        pitch = max(pitch, film.width_mm / averaged_px)
+        asked = film.width_mm / averaged_px
+        # A picture of moderate size is drawn on its own pixels even where fewer would do: then its
+        # grid is the same for every hole.
+        moderate = film.width_mm * film.height_mm < MOST_STEPPED_PX * asked**2
+        pitch = max(asked, least) if moderate else max(pitch, asked)
     columns = max(1, math.ceil(film.width_mm / pitch - 1e-9))
     pitch = film.width_mm / columns
     rows = max(1, round(film.height_mm / pitch))
@@ -317,7 +321,9 @@ def _with_margins(
     material: Material,
 ) -> tuple[tuple[int, int], tuple[int, int]]:
     """Return the padded shape and the margin above and left of the frame, in pixels."""
-    z, d = camera.focal_length_mm, camera.hole.diameter_mm
+    z = camera.focal_length_mm
+    # A family's middle hole: twice as large ones have half the tail.
+    d = math.sqrt(camera.hole.diameter_mm * greatest_mm)
     longest_mm = 1e-6 * max(float(c.wavelengths_nm.max()) for c in material.channels)
     # Share 2 lambda z / (pi^2 d r) of a point's light lies beyond r: half the slope of the
     # transfer function at zero, which no focus changes.

@@ -9,10 +9,10 @@ from numpy.typing import NDArray
 from pinsim.render.plan import RenderPlan
 from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks, resample_line
 from pinsim.scene import DistanceMap, Scene
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 
-_THREADS = 2
 # Film that looks sideways or back, this close to the hole's plane: a flat photo has nothing there.
 _LEAST_AHEAD = 1e-3
 _STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
@@ -72,7 +72,7 @@ def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
     def lay(block: Block) -> None:
         _lay_rows(scene, block, across, needed, planes)
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for _ in pool.map(lay, down):
             pass
     inside = plan.inside
@@ -166,7 +166,7 @@ def _project_bent(scene: Scene, plan: RenderPlan) -> FilmView:
         else:
             planes[:, k, :] = line.T
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for _ in pool.map(lay, range(bent_mm.size)):
             pass
     within = (across >= -0.5) & (across <= across_size - 0.5) & seen[:, None]

@@ -23,6 +23,7 @@ from pinsim.render.kernels import BandKernels, Kernels, PolarReader, Values, che
 from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
 from pinsim.render.resample import ALIAS_FREE, response
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 Array = NDArray[np.float64]
@@ -32,7 +33,6 @@ Kernel = NDArray[np.inexact[Any]]
 # spectrum, and there are some tens of them.
 _Rows = Callable[[slice], Kernel]
 
-_THREADS = 2
 LEAST_RESPONSE = 0.02
 # A large grid is drawn with fewer modes: an rms error of 1e-3 of white at the frame's worst point,
 # less than an 8-bit file rounds by. Small grids, where modes cost nothing, are drawn with all.
@@ -71,13 +71,13 @@ def spread(view: FilmView, *, kept: Kept | None = None, report: Reporter = ignor
                     total.give_up()
             raise
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for done, _ in enumerate(pool.map(add, range(-1, count))):
             report(Progress(done, count + 1, "spreading the light"))
-    exposure = _inverse(light.spectra, plan)
+    exposure = _inverse(grid.shape_spectra(light.spectra), plan)
     if cover is not None:
         # Coverage is 1 up to what unlike kernels lose or invent at borders of distance.
-        exposure /= np.maximum(_inverse(cover.spectra, plan), 0.1)
+        exposure /= np.maximum(_inverse(grid.shape_spectra(cover.spectra), plan), 0.1)
     shade = own_shade(plan)
     if shade is not None:
         exposure *= shade
@@ -155,7 +155,7 @@ def _add_mode(
 
 
 def _inverse(spectra: Spectrum, plan: RenderPlan) -> Float:
-    return np.asarray(fft.irfft2(spectra, s=plan.padded, workers=_THREADS, overwrite_x=True))
+    return np.asarray(fft.irfft2(spectra, s=plan.padded, workers=THREADS, overwrite_x=True))
 
 
 class _Fields:
@@ -214,13 +214,20 @@ class _Frequencies:
             np.hypot(cells[0][:, None], cells[1][None, :]),
             np.arctan2(cells[0][:, None], cells[1][None, :]),
         )
-        # Each row of frequencies lies between two rows of cells; nothing is drawn beyond the cells.
+        # Each row of frequencies lies between two rows of cells; beyond them is a row of nothing.
         place = np.clip((down + end) * (_TABLE_CELLS / end), 0.0, 2 * _TABLE_CELLS - 1e-6)
-        cell = place.astype(np.intp)
-        within = self._window[0] * (np.abs(down) <= end)
-        self._cells_down = (cell, (place - cell).astype(np.float32), within.astype(np.float32))
-        self._cells_across = _hats(across, cells[1]) * self._window[1][:, None]
+        cell = np.where(np.abs(down) <= end, place.astype(np.intp), 2 * _TABLE_CELLS + 1)
+        self._cells_down = (cell, (place - np.floor(place)).astype(np.float32)[:, None])
+        self._cells_across = _hats(across, cells[1])
         self._down, self._across = down.astype(np.float32), across.astype(np.float32)
+
+    def shape_spectra(self, spectra: Spectrum) -> Spectrum:
+        """Give back what resampling dimmed, or average pixels: the same for all kernels, so once."""
+        for plane in spectra:
+            for start in range(0, plane.shape[0], _ROWS):
+                rows = slice(start, min(start + _ROWS, plane.shape[0]))
+                plane[rows] *= self._window[0][rows, None] * self._window[1]
+        return spectra
 
     def mean(self, band: BandKernels) -> _Rows:
         """Return the mean kernel at every frequency.
@@ -240,10 +247,8 @@ class _Frequencies:
             at = np.hypot(self._down[some, None], self._across)
             at *= per_step
             at += np.float32(0.5)
-            kernel: Kernel = np.take(table, at.astype(np.int32), mode="clip")
-            kernel *= self._window[0][some, None]
-            kernel *= self._window[1]
-            kernel = kernel + rest(some)
+            kernel = rest(some)
+            kernel += np.take(table, at.astype(np.int32), mode="clip")
             return kernel
 
         return rows
@@ -256,15 +261,16 @@ class _Frequencies:
         """Read a polar table through a coarser square one, by linear interpolation."""
         table = share * self._reader.at(values)
         kind = np.complex64 if np.iscomplexobj(table) else np.float32
-        wide = table.astype(kind) @ self._cells_across.T
-        step = np.diff(wide, axis=0)
+        wide = np.zeros((table.shape[0] + 1, self._cells_across.shape[0]), kind)
+        np.matmul(table.astype(kind), self._cells_across.T, out=wide[:-1])
+        step = np.zeros_like(wide)
+        np.subtract(wide[1:-1], wide[:-2], out=step[:-2])
 
         def rows(some: slice) -> Kernel:
-            cell, share, window = (part[some] for part in self._cells_down)
+            cell, share = (part[some] for part in self._cells_down)
             kernel: Kernel = np.take(step, cell, axis=0)
-            kernel *= share[:, None]
+            kernel *= share
             kernel += np.take(wide, cell, axis=0)
-            kernel *= window[:, None]
             return kernel
 
         return rows
