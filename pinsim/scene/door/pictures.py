@@ -88,7 +88,9 @@ def read_plain_deep_png(path: Path, kind: str) -> tuple[NDArray[Any], object]:
     import imagecodecs
 
     with opened(path, kind) as image:
-        orientation = orientation_left(image)
+        orientation = orientation_left(image)  # Pillow decodes all of a PNG to find it
+        if image.mode == "I;16":  # and what is grey, it keeps whole
+            return np.asarray(image), orientation
         return imagecodecs.png_decode(path.read_bytes()), orientation
 
 
