@@ -81,7 +81,8 @@ def _read_fields(packet: bytes) -> Mapping[str, str]:
     parser.StartDoctypeDeclHandler = refuse
     parser.EntityDeclHandler = refuse
     try:
-        parser.Parse(packet.strip(b"\0 \r\n\t"), True)
+        # Padding of zeros is no XML; with two bytes a letter a zero belongs to the last letter.
+        parser.Parse(packet if b"\0" in packet[:4] else packet.strip(b"\0 \r\n\t"), True)
     except (expat.ExpatError, LookupError, ValueError) as problem:
         raise _NotReadError(f"they are not XML ({ascii(str(problem))[1:-1]})") from None
     return {name: value.strip() for name, value in found.items()}
