@@ -86,9 +86,8 @@ class Ellipse:
         self, shift_mm: Array, curvature: Array, plate_shift_mm: Array, *, quick: bool = False
     ) -> Array:
         """An affine map makes it a unit disc; areas and phases keep their ratio."""
-        return self.otf_in_colours(
-            np.ones(1), shift_mm, curvature, plate_shift_mm, quick=quick
-        )[0]
+        values = self.otf_in_colours(np.ones(1), shift_mm, curvature, plate_shift_mm, quick=quick)
+        return np.asarray(values[0])
 
     def otf_in_colours(
         self,
