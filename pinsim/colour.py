@@ -9,6 +9,8 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from pinsim.threads import THREADS
+
 Float = NDArray[np.float32]
 
 
@@ -57,7 +59,7 @@ def encode_8bit(linear: Float) -> NDArray[np.uint8]:
         index = (root * np.float32(_STEPS) + np.float32(0.5)).astype(np.uint16)
         np.take(table, index, out=codes[part], mode="clip")
 
-    with ThreadPoolExecutor(2) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         list(pool.map(encode, range(0, flat.size, _CHUNK)))
     return codes.reshape(linear.shape)
 

@@ -2,7 +2,7 @@
 
 import os
 import tempfile
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from functools import lru_cache
 from pathlib import Path
 from typing import Any, BinaryIO
@@ -204,6 +204,29 @@ def write_tiff(file: BinaryIO, data: NDArray[Any], *, dpi: float, description: s
         software="pinsim",
         **extra,
     )
+
+
+def write_tiff_pages(
+    file: BinaryIO, pages: Iterable[NDArray[np.uint8]], *, dpi: float, description: str
+) -> None:
+    """Write sRGB pages, (rows, columns, 3) uint8, one after another into one TIFF."""
+    import imageio.v3 as iio
+
+    description = description.encode("ascii", "backslashreplace").decode()
+    made: Any
+    with iio.imopen(file, "w", plugin="tifffile", extension=".tif") as made:
+        for codes in pages:
+            made.write(
+                codes,
+                photometric="rgb",
+                compression="zlib",
+                resolution=(dpi, dpi),
+                resolutionunit="INCH",
+                description=description,
+                metadata=None,
+                software="pinsim",
+                iccprofile=srgb_profile(),
+            )
 
 
 def dpi_for(pitch_mm: float) -> float:

@@ -288,7 +288,7 @@ def outwards(point_mm: Vector) -> Vector:
 def places(
     camera: Camera, *, distance_mm: float = math.inf, wavelength_nm: float | None = None
 ) -> tuple[AtPlace, ...]:
-    """Return light and sharpness at the places that stand for a frame, without looking for a best hole."""
+    """Return light and sharpness at the places that stand for a frame, and no best hole."""
     return _places(camera, light_for(wavelength_nm, camera.material), distance_mm)
 
 

@@ -283,15 +283,215 @@ def twelve_layers(folder: Path) -> None:
     )
 
 
+def tree_bytes(root: int) -> int:
+    """Return the memory of a process and all its children, what they share counted once (Linux)."""
+    parents: dict[int, int] = {}
+    for stat in Path("/proc").glob("[0-9]*/stat"):
+        try:
+            parents[int(stat.parent.name)] = int(stat.read_text().rsplit(")", 1)[1].split()[1])
+        except OSError:
+            continue
+    tree = {root}
+    while more := {pid for pid, parent in parents.items() if parent in tree} - tree:
+        tree |= more
+    total = 0
+    for pid in tree:
+        try:
+            text = Path(f"/proc/{pid}/smaps_rollup").read_text()
+        except OSError:
+            continue
+        total += sum(int(line.split()[1]) for line in text.splitlines() if line.startswith("Pss:"))
+    return 1024 * total
+
+
+def watched(*arguments: str) -> tuple[float, float, int]:
+    """Run a process; return wall seconds, processor seconds of its tree, and its peak bytes."""
+    import resource
+
+    before = resource.getrusage(resource.RUSAGE_CHILDREN)
+    start, peak = time.perf_counter(), 0
+    running = subprocess.Popen(
+        [sys.executable, *arguments], stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL
+    )
+    while running.poll() is None:
+        peak = max(peak, tree_bytes(running.pid))
+        time.sleep(0.25)
+    wall = time.perf_counter() - start
+    assert running.returncode == 0, arguments
+    after = resource.getrusage(resource.RUSAGE_CHILDREN)
+    return wall, after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime, peak
+
+
+def many_frames(folder: Path) -> None:
+    """Ten holes by ten depths as a contact sheet: two workers against one, and against previews."""
+    holes = [part for k in range(10) for part in ("--hole", f"0.{20 + 3 * k}mm")]
+    depths = [part for k in range(10) for part in ("--focal-length", f"{42 + 4 * k}mm")]
+
+    def sheet(*options: str, frames: tuple[list[str], list[str]] = (holes, depths)) -> list[str]:
+        where = ("--page", "A4", "--no-table", "-o", str(folder / "many.pdf"), "--overwrite")
+        return [
+            *("-m", "pinsim", "contact-sheet", "sample:courtyard", "--camera", "sample:square-box"),
+            *("--quiet", "--width", "600", *frames[0], *frames[1], *where, *options),
+        ]
+
+    alone = ("-m", "pinsim", "preview", "sample:courtyard", "sample:square-box", "--width", "600")
+    for name, scene in (("one distance", ("--distance", "10m")), ("a distance map", ())):
+        single = statistics.median(
+            watched(*alone, *scene, "-o", str(folder / "one.png"), "--overwrite")[1]
+            for _ in range(3)
+        )
+        for detail in ("--no-detail", "--detail"):
+            one = watched(*sheet("--workers", "1", detail, *scene))
+            two = watched(*sheet("--workers", "2", detail, *scene))
+            print(
+                f"100 frames of {name}, {detail}: two workers {one[0] / two[0]:.2f} times faster than "
+                f"one ({two[0]:.0f} s, {one[0]:.0f} s), asked 1.7; a frame costs "
+                f"{two[1] / 100 / single:.2f} of a preview process ({two[1] / 100:.2f} of "
+                f"{single:.2f} s of processor time), asked 0.33; peak memory of all processes "
+                f"{two[2] / (1 << 20):.0f} MB, asked 1000"
+            )
+    costs = []
+    for count, depth_count in ((10, 1), (100, 10), (500, 50)):
+        some = [
+            part for k in range(depth_count) for part in ("--focal-length", f"{42 + 0.8 * k}mm")
+        ]
+        line = sheet("--no-detail", "--distance", "10m", "--workers", "2", frames=(holes, some))
+        wall, processor, peak = watched(*line)
+        costs.append((count, wall / count, processor / count, peak / (1 << 20)))
+    print(
+        "a frame among so many costs (wall, processor s; peak MB): "
+        + "; ".join(f"{n}: {wall:.2f}, {cpu:.2f}; {peak:.0f}" for n, wall, cpu, peak in costs)
+        + "; asked: flat from 10 to 500"
+    )
+
+
+MEASURED = """
+import resource, subprocess, sys, time
+start = time.perf_counter()
+subprocess.run(sys.argv[1:], check=True, stdout=subprocess.DEVNULL)
+used = resource.getrusage(resource.RUSAGE_CHILDREN)
+print(used.ru_maxrss, used.ru_utime + used.ru_stime, time.perf_counter() - start)
+"""
+
+
+def peak_of(*arguments: str) -> tuple[float, float, float]:
+    """Return a process's peak memory in MB, its processor seconds and its seconds."""
+    done = subprocess.run(
+        [sys.executable, "-c", MEASURED, sys.executable, *arguments],
+        check=True,
+        capture_output=True,
+        text=True,
+    )
+    peak_kb, busy_s, wall_s = (float(word) for word in done.stdout.split())
+    return peak_kb / 1024.0, busy_s, wall_s
+
+
+def write_panorama(path: Path, rows: int) -> None:
+    """Write an equirectangular JPEG of soft waves, gratings and noise."""
+    rng = np.random.default_rng(1)
+    azimuth = np.linspace(-np.pi, np.pi, 2 * rows, endpoint=False)
+    codes = np.empty((rows, 2 * rows, 3), np.uint8)
+    for row in range(rows):
+        height = np.pi / 2 - (row + 0.5) / rows * np.pi
+        east, ahead = np.cos(height) * np.sin(azimuth), np.cos(height) * np.cos(azimuth)
+        light = 128.0 + 60.0 * np.sin(40.0 * height) * np.cos(30.0 * east)
+        light += 30.0 * np.cos(300.0 * ahead) + rng.integers(-8, 9, azimuth.size)
+        codes[row] = np.clip(light[:, None] * [1.0, 0.9, 0.8], 0, 255)
+    import imagecodecs
+
+    path.write_bytes(imagecodecs.jpeg8_encode(codes, level=88))
+
+
+def large_panoramas(folder: Path) -> None:
+    """Print memory and time of whole previews, by the photo's size and by the film's."""
+    panorama, drawn = folder / "panorama.jpg", folder / "film.jpg"
+    # 0.24 mm at 45 mm holds about 27 px/mm; these frames are of 0.5, 1 and 2 megapixels.
+    for rows, frames in ((5000, (38,)), (7072, (38,)), (10_000, (26, 38, 53))):
+        write_panorama(panorama, rows)
+        for side in frames:
+            peak_mb, busy_s, wall_s = peak_of(
+                *("-m", "pinsim", "preview", str(panorama), "sample:wide-box"),
+                *("--film", f"{side}mmx{side}mm", "--projection", "equirectangular"),
+                *("-o", str(drawn), "--overwrite"),
+            )
+            pixels = Image.open(drawn).size
+            print(
+                f"panorama of {2e-6 * rows * rows:.0f} megapixels to {pixels[0]} x {pixels[1]} px: "
+                f"peak {peak_mb:.0f} MB, {busy_s:.1f} s of processor, {wall_s:.1f} s; "
+                "asked: under 1500 MB"
+            )
+
+
+def live_server() -> None:
+    """The live page's server alone: from a changed hole to the bytes of the picture, over loopback."""
+    import json
+    import re
+    import signal
+    import urllib.request
+
+    line = ("live", "sample:courtyard", "sample:square-box", "--distance", "10m", "--no-browser")
+    start = time.perf_counter()
+    server = subprocess.Popen(
+        [sys.executable, "-m", "pinsim", *line], stdout=subprocess.PIPE, text=True
+    )
+    assert server.stdout is not None
+    found = re.search(r"(http\S+)/open\?token=(\S+)", server.stdout.readline())
+    assert found is not None
+    base, token = found.groups()
+
+    def ask(path: str, body: object = None) -> bytes:
+        request = urllib.request.Request(
+            base + path,
+            None if body is None else json.dumps(body).encode(),
+            {"X-Pinsim-Token": token, "Content-Type": "application/json"},
+        )
+        with urllib.request.urlopen(request) as answer:
+            return bytes(answer.read())
+
+    try:
+        told = json.loads(ask("/api/start"))
+        state, widths = told["state"], told["widths_px"]
+        ask("/api/picture", {"state": state, "width_px": widths["coarse"]})
+        print(
+            f"live: first picture {time.perf_counter() - start:.2f} s after the command; asked: 1.5 s"
+        )
+        for kind in ("coarse", "fine"):
+            ask("/api/picture", {"state": state, "width_px": widths[kind]})
+            times = sorted(
+                1000.0
+                * timed(
+                    lambda k=kind, n=n: ask(
+                        "/api/picture",
+                        {
+                            "state": {**state, "hole_mm": 0.26 + 0.004 * n},
+                            "width_px": widths[k],
+                        },
+                    )
+                )
+                for n in range(1, 41)
+            )
+            print(
+                f"live: another hole, {widths[kind]} px across 6x6, to the picture's bytes: "
+                f"{statistics.median(times):.0f} ms, 95 % within {times[37]:.0f} ms; "
+                f"asked: {'100' if kind == 'coarse' else '300'} ms"
+            )
+    finally:
+        server.send_signal(signal.SIGTERM)
+        server.wait()
+
+
 def main() -> None:
     material_tones()
     second_look()
+    live_server()
     transfer_functions()
     start_up()
     varying_kernel()
     with tempfile.TemporaryDirectory() as folder:
         whole_preview(Path(folder))
         twelve_layers(Path(folder))
+        many_frames(Path(folder))
+        large_panoramas(Path(folder))
 
 
 if __name__ == "__main__":

@@ -14,6 +14,7 @@ import pytest
 from PIL import Image
 
 import pinsim
+from pinsim.batch.plan_file import read_plan
 from pinsim.cli import COMMANDS, _group
 from pinsim.samples import names
 
@@ -35,8 +36,13 @@ def commands(page: Path) -> list[str]:
 
 
 ALL_COMMANDS = [(page.name, line) for page in PAGES for line in commands(page)]
-SCRIPTS = blocks(ROOT / "docs" / "python.md", "python")
-DESIGNS = [text for page in PAGES for text in blocks(page, "toml") if "focal_length" in text]
+SCRIPTS = [
+    text
+    for name in ("python.md", "many-at-once.md")
+    for text in blocks(ROOT / "docs" / name, "python")
+]
+DESIGNS = [text for page in PAGES for text in blocks(page, "toml") if "focal_length =" in text]
+PLANS = [text for page in PAGES for text in blocks(page, "toml") if "scenes =" in text]
 SCENES = [text for page in PAGES for text in blocks(page, "toml") if "photo" in text]
 
 
@@ -87,6 +93,14 @@ def test_a_design_of_the_documents_loads(text, tmp_path):
     file = tmp_path / "camera.toml"
     file.write_text(text, "utf-8")
     assert pinsim.Camera.load(file).focal_length_mm > 0.0
+
+
+@pytest.mark.parametrize("text", PLANS)
+def test_a_plan_of_the_documents_loads(text, tmp_path):
+    """Every key shown is known, every value allowed; scenes and cameras are asked for beside it."""
+    file = tmp_path / "plan.toml"
+    file.write_text(text, "utf-8")
+    assert read_plan(file)["scenes"] == (str(tmp_path / "courtyard.jpg"),)
 
 
 @pytest.mark.parametrize("text", SCENES)

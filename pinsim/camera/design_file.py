@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import Any
 
 from pinsim.camera.camera import TONES, Camera
+from pinsim.camera.design_text import TracedFrom
 from pinsim.camera.film import BEND_AXES, Film, named_film
 from pinsim.camera.hole import SHAPES, Hole
 from pinsim.errors import DesignError, SceneError
@@ -24,10 +25,11 @@ def read_design(path: str | Path) -> Camera:
         raise DesignError(
             f"{file} is a scene file, not a camera design; the scene comes first, then the camera."
         )
-    return _camera(Table(values, str(file), DesignError), file.parent)
+    return camera_from(Table(values, str(file), DesignError), file.parent)
 
 
-def _camera(top: Table, folder: Path) -> Camera:
+def camera_from(top: Table, folder: Path) -> Camera:
+    """Return the camera that a design's table tells; what it names lies in a folder."""
     name = top.text("name", "camera")
     focal_length = length_mm(top.need("focal_length", '"60 mm"'), top.place("focal_length"))
     hole = _hole(top.table("hole"), folder)
@@ -100,6 +102,26 @@ def _traced(table: Table, folder: Path, thickness: float) -> Hole:
     except SceneError as error:
         raise DesignError(f"{table.place('image')}: {error}") from None
     return Hole.traced(hole.opening, plate_thickness_mm=thickness)
+
+
+def read_traced_from(path: str | Path) -> TracedFrom:
+    """Return what a design's file says of the scan of its traced hole, so that it can be said again.
+
+    The scan's path is made whole, as the design may be written elsewhere.
+    """
+    file = resolve(path, "camera", DesignError)
+    top = Table(read_toml(file, DesignError, "camera design"), str(file), DesignError)
+    table = top.table("hole")
+    diameter = None
+    if table.has("diameter"):
+        diameter = length_mm(table.take("diameter"), table.place("diameter"))
+    return TracedFrom(
+        image=str((file.parent / table.text("image", "")).absolute()),
+        scale=_scale(table),
+        seen_from=table.text("seen_from", "behind"),
+        polarity=table.text("polarity", "auto"),
+        diameter_mm=diameter,
+    )
 
 
 def _scale(table: Table) -> Scale:

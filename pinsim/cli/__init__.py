@@ -3,8 +3,9 @@
 __init__.py     the table of commands, and how every error becomes one line
 options.py      quantities and the options that commands share
 designs.py      what was typed -> Scenes and Cameras
+many.py         what was typed for a contact sheet -> its frames, drawn and told of
 show.py         progress bars, tables and what is printed at the end
-preview.py, compare.py, contact_sheet.py, numbers.py, exposure.py, materials.py, trace.py
+preview.py, compare.py, contact_sheet.py, numbers.py, exposure.py, materials.py, trace.py, live.py
                 one command each
 """
 
@@ -21,14 +22,15 @@ from pinsim.errors import PinsimError, nearest
 # name: (module, what it does). Help needs none of the modules, so it is instant.
 COMMANDS = {
     "preview": ("pinsim.cli.preview", "Draw what one camera would record of a scene."),
-    "compare": ("pinsim.cli.compare", "Lay two designs or two hole sizes side by side."),
-    "contact-sheet": ("pinsim.cli.contact_sheet", "Lay scenes and designs out on one sheet."),
+    "compare": ("pinsim.cli.compare", "Lay designs or hole sizes side by side, and say which is finer."),
+    "contact-sheet": ("pinsim.cli.contact_sheet", "Lay many scenes and designs out on sheets."),
     "numbers": (
         "pinsim.cli.numbers",
         "Print a camera's figures: sharpness, angles, light, best hole.",
     ),
     "exposure": ("pinsim.cli.exposure", "Tell times by light and material; print them as a card."),
     "materials": ("pinsim.cli.materials", "List films, papers and sensors, or tell all of one."),
+    "live": ("pinsim.cli.live", "Change a camera in the browser and see its picture change."),
     "trace": ("pinsim.cli.trace", "Measure a drilled hole from its scan, and design with it."),
 }
 

@@ -1,5 +1,6 @@
 """Quantities with units as option types, and the groups of options that commands share."""
 
+import math
 from collections.abc import Callable
 from typing import TYPE_CHECKING, Any, TypeVar
 
@@ -104,6 +105,39 @@ class Angles(_AnglesType):
 LOOK_AT = Angles()
 
 
+if TYPE_CHECKING:
+    _PlaceType = click.ParamType[tuple[float, float]]
+else:
+    _PlaceType = click.ParamType
+
+
+class Place(_PlaceType):
+    """A place in a picture: shares from its left and its top, with a comma between them."""
+
+    name = "place"
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> tuple[float, float]:
+        """Return (x, y), each 0 to 1; what cannot be read is a UnitError."""
+        if isinstance(value, tuple):
+            return value
+        where = param.opts[0] if param is not None else self.name
+        try:
+            x, y = (float(part) for part in str(value).split(","))
+        except ValueError:
+            x = y = math.nan
+        if not (0.0 <= x <= 1.0 and 0.0 <= y <= 1.0):
+            raise UnitError(
+                f"{where} is {value!a}; write two shares of the picture, 0 to 1, from its left and its "
+                "top, with a comma between them: 0.3,0.6."
+            )
+        return x, y
+
+
+PLACE = Place()
+
+
 def _ev_or_light(ctx: click.Context, param: click.Parameter, value: float | None) -> float | None:
     """Take the EV from --light, which is read before it, if it is not given itself."""
     light = ctx.params.get("light")
@@ -139,16 +173,14 @@ def _all(*options: Callable[[Command], Command]) -> Callable[[Command], Command]
     return decorate
 
 
-scene_options = _all(
-    click.option(
-        "--view",
-        "view_deg",
-        type=ANGLE,
-        help="The photo's angle of view from its left edge to its right; else from its Exif data.",
-    ),
-    click.option(
-        "--distance", "distance_mm", type=DISTANCE, help="How far everything is: 4m, infinity."
-    ),
+_view = click.option(
+    "--view",
+    "view_deg",
+    type=ANGLE,
+    help="The photo's angle of view from its left edge to its right; else from its Exif data.",
+)
+
+_photo = (
     click.option(
         "--distance-map",
         metavar="FILE",
@@ -227,6 +259,26 @@ scene_options = _all(
         help="Brighten what is clipped white in the photo, as lamps are, by up to so many stops. "
         "This light is invented.",
     ),
+)
+
+scene_options = _all(
+    _view,
+    click.option(
+        "--distance", "distance_mm", type=DISTANCE, help="How far everything is: 4m, infinity."
+    ),
+    *_photo,
+)
+
+scenes_options = _all(
+    _view,
+    click.option(
+        "--distance",
+        "distances_mm",
+        type=DISTANCE,
+        multiple=True,
+        help="How far everything is: 4m, infinity; repeat for more.",
+    ),
+    *_photo,
 )
 
 own_materials = click.option(
@@ -325,16 +377,11 @@ trace_options = _all(
     ),
 )
 
-light_options = _all(
-    click.option(
-        "--wavelength", "wavelength_nm", type=WAVELENGTH, help="All light of one colour: 550nm."
-    ),
-    click.option(
-        "--time",
-        "time_s",
-        type=TIME_OR_AUTO,
-        help="Exposure time, or auto: the picture then has the material's own tones.",
-    ),
+_wavelength = click.option(
+    "--wavelength", "wavelength_nm", type=WAVELENGTH, help="All light of one colour: 550nm."
+)
+
+_light = (
     click.option("--light", type=LIGHT, is_eager=True, help=f"{_LIGHT_HELP}."),
     click.option(
         "--ev",
@@ -349,6 +396,26 @@ light_options = _all(
         show_default=True,
         help="Seen as the scene, from behind the film, or on its exposed face.",
     ),
+)
+
+_TIME_HELP = "Exposure time, or auto: the picture then has the material's own tones"
+
+light_options = _all(
+    _wavelength,
+    click.option("--time", "time_s", type=TIME_OR_AUTO, help=f"{_TIME_HELP}."),
+    *_light,
+)
+
+lights_options = _all(
+    _wavelength,
+    click.option(
+        "--time",
+        "times_s",
+        type=TIME_OR_AUTO,
+        multiple=True,
+        help=f"{_TIME_HELP}; repeat for more.",
+    ),
+    *_light,
 )
 
 times_options = _all(

@@ -316,7 +316,10 @@ def _scales(sphere: _Sphere, plan: RenderPlan, square: tuple[slice, slice]) -> _
         row, column = _POLE_FINER * row, _POLE_FINER * column
     # What the photo's kernel still lets through comes back to the film as J transposed of it, and
     # must not be folded onto what the film's kernel lets through.
-    leaves = [min(wave * _END / _FLAT, 0.5 * _END) for wave in (row, column)]
+    finest = 0.5 * _END, 0.5 * _END / float(level.min())  # columns crowd
+    leaves = [
+        min(wave * _END / _FLAT, most) for wave, most in zip((row, column), finest, strict=True)
+    ]
     highest = np.abs(down) * leaves[0] + np.abs(across) * leaves[1]
     need = np.ceil(_PASS + highest.max(axis=0) - 0.05)
     uneven = max(

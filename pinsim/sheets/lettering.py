@@ -7,7 +7,7 @@ import unicodedata
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
-from typing import Any
+from typing import Any, BinaryIO
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +23,7 @@ INK = (28, 28, 30)
 FAINT_INK = (92, 92, 96)
 MARK = (255, 255, 255)
 SHEET_DPI = 200.0
+SHEET_SUFFIXES = (*files.PICTURE_SUFFIXES, ".pdf")
 GAP = 28
 
 
@@ -39,13 +40,31 @@ class Sheet:
     description: str
 
     def save(self, path: str | Path, *, overwrite: bool = False) -> None:
-        """Write the sheet as .png, .jpg or .tif; OutputError when it cannot or must not be."""
+        """Write the sheet as .png, .jpg, .tif or .pdf; OutputError when it cannot or must not be."""
         target = Path(path)
-        files.check_target(target, overwrite=overwrite, suffixes=files.PICTURE_SUFFIXES)
-        write = files.encode_picture(
-            self.codes, target.suffix.lower(), dpi=SHEET_DPI, description=self.description
+        files.check_target(target, overwrite=overwrite, suffixes=SHEET_SUFFIXES)
+        suffix = target.suffix.lower()
+        write = (
+            self._write_pdf
+            if suffix == ".pdf"
+            else files.encode_picture(
+                self.codes, suffix, dpi=SHEET_DPI, description=self.description
+            )
         )
         files.write_whole(target, write, overwrite=overwrite)
+
+    def _write_pdf(self, file: BinaryIO) -> None:
+        """Write one page of the sheet's size, its pixels as they are."""
+        from reportlab.lib.utils import ImageReader
+        from reportlab.pdfgen.canvas import Canvas
+
+        rows, columns = self.codes.shape[:2]
+        size = (columns * 72.0 / SHEET_DPI, rows * 72.0 / SHEET_DPI)
+        # Invariant: no date in it, so that equal sheets are equal files.
+        canvas = Canvas(file, pagesize=size, invariant=1)
+        canvas.setTitle(plain(self.description))
+        canvas.drawImage(ImageReader(Image.fromarray(self.codes)), 0, 0, *size)
+        canvas.save()
 
 
 class Paper:
@@ -92,7 +111,7 @@ class Paper:
         return Sheet(np.asarray(self._image), description)
 
 
-def _plain(line: str) -> str:
+def plain(line: str) -> str:
     """Return a line in ASCII: accents are dropped, other foreign letters become question marks."""
     bare = unicodedata.normalize("NFKD", line)
     bare = "".join(letter for letter in bare if not unicodedata.combining(letter))
@@ -101,7 +120,7 @@ def _plain(line: str) -> str:
 
 def _broken(line: str, font: Any, width: int) -> list[str]:
     parts: list[str] = []
-    for word in _plain(line).split(" "):
+    for word in plain(line).split(" "):
         longer = f"{parts[-1]} {word}" if parts else word
         if parts and font.getlength(longer) <= width:
             parts[-1] = longer

@@ -107,7 +107,7 @@ def numbers_plot(
     distance_mm : hole to object. wavelength_nm : one colour; else the material's own light.
     Raises DesignError when no light reaches any of these places.
     """
-    view = _View(camera, light_for(wavelength_nm, camera.material_name), distance_mm)
+    view = _View(camera, light_for(wavelength_nm, camera.material), distance_mm)
     plot, plot_note = _plot(view)
     tiles, captions, tiles_note = _tiles(view)
     across, down = len(tiles[0]), len(tiles)
