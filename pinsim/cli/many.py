@@ -319,8 +319,8 @@ def said_before(one: Wanted, job: Job, left: int) -> str:
         return f"{_count(left, 'frame')} to draw ({there} there) on {one.dask}"
     who = "one process" if count < 2 else f"{count} processes of one thread each"
     need = memory_bytes(job.missing(), one.scenes, count) / (1 << 20)
-    return f"{_count(left, 'frame')} to draw ({there} there) by {who}; "
-        f"about {_round(need)} MB of memory in all"
+    said = f"{_count(left, 'frame')} to draw ({there} there) by {who}"
+    return f"{said}; about {_round(need)} MB of memory in all"
 
 
 def _round(value: float) -> str:
