@@ -31,7 +31,16 @@ FLOOR = {name: number for number, names in enumerate(FLOORS) for name in names}
 MAY_LOAD = {
     "batch": {"PIL", "dask", "distributed"},
     "optics": {"scipy"},
-    "scene": {"OpenEXR", "PIL", "imagecodecs", "pillow_heif", "rawpy", "scipy", "skimage", "tifffile"},
+    "scene": {
+        "OpenEXR",
+        "PIL",
+        "imagecodecs",
+        "pillow_heif",
+        "rawpy",
+        "scipy",
+        "skimage",
+        "tifffile",
+    },
     "files": {"PIL", "imagecodecs", "imageio"},
     "live": {"PIL", "starlette", "uvicorn"},
     "render": {"scipy", "skimage"},

@@ -376,6 +376,7 @@ def test_bad_files_and_bad_words_leave_the_last_good_picture(look):
     typed.press("Enter")
     page.get_by_text(re.compile("elephants")).first.wait_for()
     assert typed.get_attribute("aria-invalid") == "true"
+    assert typed.input_value() == "0.3 elephants"  # stays, to be mended
     described = page.locator(f"#{typed.get_attribute('aria-describedby')}")
     assert "elephants" in described.inner_text()
     typed.fill("400 mm")

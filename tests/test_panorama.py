@@ -446,7 +446,7 @@ def packet(fields, form="attributes", prefix="GPano"):
 @pytest.mark.parametrize("form", ["attributes", "elements"])
 def test_the_place_is_read_from_xmp(form):
     """Names as in the published field reference; the view is 360 x 400/800 degrees."""
-    place, notes = panorama_of(packet(CROP, form), (100, 400))
+    place, _, notes = panorama_of(packet(CROP, form), (100, 400))
     assert notes == ()
     assert place == PanoramaPlace(
         full_width_px=800.0, full_height_px=400.0, left_px=200.0, top_px=120.0
@@ -456,13 +456,13 @@ def test_the_place_is_read_from_xmp(form):
 def test_the_prefix_and_the_encoding_do_not_matter():
     text = packet(CROP, prefix="p").decode()
     for encoding in ("utf-8", "utf-16"):
-        place, _ = panorama_of(text.encode(encoding), (100, 400))
+        place, *_ = panorama_of(text.encode(encoding), (100, 400))
         assert place is not None, encoding
         assert place.left_px == 200.0
 
 
 def test_a_picture_made_smaller_keeps_its_place():
-    place, _ = panorama_of(packet(CROP), (50, 200))
+    place, *_ = panorama_of(packet(CROP), (50, 200))
     assert place == PanoramaPlace(
         full_width_px=400.0, full_height_px=200.0, left_px=100.0, top_px=60.0
     )
@@ -475,7 +475,7 @@ def test_pose_is_read_and_said():
         "PosePitchDegrees": "-3",
         "PoseRollDegrees": "2",
     }
-    place, notes = panorama_of(packet(fields), (100, 200))
+    place, _, notes = panorama_of(packet(fields), (100, 200))
     assert place is not None
     assert (place.pitch_deg, place.roll_deg, place.heading_deg) == (-3.0, 2.0, 350.5)
     assert notes == ("levelled by its XMP data: pitch -3 deg, roll 2 deg",)
@@ -501,8 +501,8 @@ ODD = {
 @pytest.mark.parametrize("name", ODD)
 def test_odd_fields_are_left_out_with_a_word(name):
     fields, words = ODD[name]
-    place, notes = panorama_of(packet(fields), (100, 400))
-    assert any(words in note for note in notes), notes
+    place, why, notes = panorama_of(packet(fields), (100, 400))
+    assert any(words in note for note in (why, *notes)), (why, notes)
     if name == "pitch":
         assert place is not None
         assert place.pitch_deg == 0.0
@@ -524,7 +524,7 @@ HOSTILE = {
 @pytest.mark.parametrize("name", HOSTILE)
 def test_a_document_type_is_refused_unread(name):
     """XML 1.0: entities can be declared in a document type only."""
-    place, notes = panorama_of(HOSTILE[name] + packet(CROP), (100, 400))
+    place, _, notes = panorama_of(HOSTILE[name] + packet(CROP), (100, 400))
     assert place is None
     assert len(notes) == 1
     assert "XMP data are not used" in notes[0]
@@ -534,16 +534,16 @@ def test_a_document_type_is_refused_unread(name):
     "data", [b"", b"\0\0", b"<a>", packet(CROP)[:-40], packet(CROP) + b"<", b"\xff" * 99]
 )
 def test_a_damaged_packet_is_no_panorama(data):
-    place, _ = panorama_of(data, (100, 400))
+    place, *_ = panorama_of(data, (100, 400))
     assert place is None
     long = NAMESPACE.encode() + b" " * 2_000_000
-    assert panorama_of(long, (100, 400))[1][0].startswith(
+    assert panorama_of(long, (100, 400))[2][0].startswith(
         "its XMP data are not used: they are 2000"
     )
 
 
 def test_an_endless_field_stays_short():
-    place, notes = panorama_of(packet({"ProjectionType": "x" * 90_000}, "elements"), (100, 400))
+    place, _, notes = panorama_of(packet({"ProjectionType": "x" * 90_000}, "elements"), (100, 400))
     assert place is None
     assert len(notes[0]) < 400
 
@@ -572,6 +572,16 @@ def test_a_photo_that_says_it_is_a_panorama_needs_no_projection(tmp_path, suffix
     assert scene.horizontal_view_deg == 180.0
     assert scene.vertical_view_deg == pytest.approx(45.0)
     assert any("taken as a panorama, 12 % of a sphere" in note for note in scene.notes)
+
+
+def test_a_part_cut_from_a_panorama_is_asked_for_its_place(run, tmp_path):
+    save(tmp_path / "round.jpg", {**CROP, "CroppedAreaImageHeightPixels": "300"})
+    code, _, err = run("preview", "round.jpg", *CAMERA)
+    assert code == 2
+    assert "it was cropped since. Say how wide it sees (--view 200deg" in err
+    code, out, err = run("preview", "round.jpg", *CAMERA, "--view", "90deg")
+    assert (code, err) == (0, "")
+    assert "taken as a panorama, 6 % of a sphere" in out
 
 
 def test_what_is_typed_comes_before_the_metadata(tmp_path):
@@ -631,7 +641,7 @@ def test_a_wrong_table_is_refused(tmp_path, text):
 
 def test_a_place_needs_something_that_tells_it():
     with pytest.raises(SceneError, match="x is 300 x 100 pixels: a whole sphere"):
-        settled_place((100, 300), view_deg=None, told=None, from_file=None, name="x")
+        settled_place((100, 300), view_deg=None, told=None, from_file=None, why="", name="x")
 
 
 CAMERA = ("--hole", "0.8mm", "--focal-length", "20mm", "--film", "16mmx12mm", "-o", "out.png")

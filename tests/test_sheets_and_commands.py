@@ -375,7 +375,9 @@ def test_slim_frames_fit_on_their_sheets(run, photo, written, frame):
 
 def test_partly_covered_frames_say_so_on_the_sheet(run, photo, written):
     assert run("contact-sheet", photo, "--view", "10deg", *TYPED_CAMERA, *GREEN)[0] == 0
-    assert any(re.search(r"photo covers 1[67](\.\d)? % of the frame", words) for words, *_ in written)
+    assert any(
+        re.search(r"photo covers 1[67](\.\d)? % of the frame", words) for words, *_ in written
+    )
 
 
 def test_a_sheet_of_nothing_is_refused():

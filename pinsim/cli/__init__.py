@@ -22,7 +22,7 @@ from pinsim.errors import PinsimError, nearest
 # name: (module, what it does). Help needs none of the modules, so it is instant.
 COMMANDS = {
     "preview": ("pinsim.cli.preview", "Draw what one camera would record of a scene."),
-    "compare": ("pinsim.cli.compare", "Lay designs or hole sizes side by side, and say which is finer."),
+    "compare": ("pinsim.cli.compare", "Lay designs or holes side by side, and say which is finer."),
     "contact-sheet": ("pinsim.cli.contact_sheet", "Lay many scenes and designs out on sheets."),
     "numbers": (
         "pinsim.cli.numbers",

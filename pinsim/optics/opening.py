@@ -120,9 +120,7 @@ def sunflower(count: int) -> Array:
     return np.stack([radius * np.cos(angle), radius * np.sin(angle)], axis=-1)
 
 
-def disc_overlap(
-    shift: Array, wave: Array, plate_shift: Array, *, quick: bool = False
-) -> Array:
+def disc_overlap(shift: Array, wave: Array, plate_shift: Array, *, quick: bool = False) -> Array:
     """Return the overlap integral of a unit disc, or of the lens that two of them leave.
 
     shift, wave : (n, 2), wave in cycles per unit; plate_shift : (2,), 0 for a thin plate.

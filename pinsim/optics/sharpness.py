@@ -325,8 +325,8 @@ def light_ray_otf(
 ) -> NDArray[np.complex128]:
     """Return the transfer function of one chief ray averaged over a light.
 
-    frequency : (n, 2). quick : an error of 1e-6 is allowed. Returns (n,); of a mirrored opening it is real, negative where light and dark
-    change places.
+    frequency : (n, 2). quick : an error of 1e-6 is allowed. Returns (n,); of a mirrored opening it is
+    real, negative where light and dark change places.
     """
     if isinstance(opening, Ellipse) and float(rays.falloff) > 0.0:
         curves = opening.otf_in_colours(

@@ -192,9 +192,12 @@ def _behind(
     hidden_scale = scale.ravel().copy()
     hidden_light = _clean(light, scale, edge, jump)
     filled = np.zeros(hidden_scale.size, bool)
+
+    def farther(beside: Places, own: Places) -> Mask:
+        return np.asarray(hidden_scale[beside] < hidden_scale[own] - jump)
+
     for _ in range(reach):
-        own = hidden_scale[front]
-        places, chosen = _beside(front, scale.shape[1], lambda at: hidden_scale[at] < own - jump)
+        places, chosen = _beside(front, scale.shape[1], farther)
         if not places.size:
             break
         hidden_scale[places], hidden_light[places] = (
@@ -216,12 +219,12 @@ def _clean(light: Float, scale: Float, edge: Mask, jump: float) -> Float:
     result = np.ascontiguousarray(light.reshape(len(light), -1).T)
     flat = scale.ravel()
     mixed = ndimage.maximum_filter(edge.view(np.uint8), size=2 * MIXED_PX + 1).ravel().astype(bool)
+
+    def clean_alike(beside: Places, own: Places) -> Mask:
+        return np.asarray(~mixed[beside] & (np.abs(flat[beside] - flat[own]) <= jump))
+
     for _ in range(MIXED_PX + 1):
-        todo = np.flatnonzero(mixed)
-        own = flat[todo]
-        places, chosen = _beside(
-            todo, scale.shape[1], lambda at: ~mixed[at] & (np.abs(flat[at] - own) <= jump)
-        )
+        places, chosen = _beside(np.flatnonzero(mixed), scale.shape[1], clean_alike)
         if not places.size:
             break
         result[places] = _mean_of(result, chosen)
@@ -230,10 +233,10 @@ def _clean(light: Float, scale: Float, edge: Mask, jump: float) -> Float:
 
 
 def _beside(
-    places: Places, columns: int, serves: Callable[[Places], Mask]
+    places: Places, columns: int, serves: Callable[[Places, Places], Mask]
 ) -> tuple[Places, list[tuple[Places, Mask]]]:
     """Return the places of which some neighbour serves, and each of the four, with who serves."""
-    around = [(places + step, serves(places + step)) for step in (-1, 1, -columns, columns)]
+    around = [(places + step, serves(places + step, places)) for step in (-1, 1, -columns, columns)]
     some = np.logical_or.reduce([good for _, good in around])
     return places[some], [(at[some], good[some]) for at, good in around]
 

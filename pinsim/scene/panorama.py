@@ -192,12 +192,13 @@ def settled_place(
     view_deg: float | None,
     told: ToldPlace | None,
     from_file: PanoramaPlace | None,
+    why: str,
     name: str,
 ) -> tuple[PanoramaPlace, str]:
     """Return where a panorama lies, by what comes first, and a note where one is due.
 
     shape : rows and columns of the photo. A told place comes first, then the angle of view, then the
-    file's own fields, then that the picture is a whole sphere. Raises SceneError, in one line, when
+    file's own fields, which `why` tells to be unusable, then that the picture is a whole sphere. Raises SceneError, in one line, when
     none of them settles it.
     """
     pose = from_file or full_sphere(shape)
@@ -227,7 +228,7 @@ def settled_place(
     else:
         raise SceneError(
             f"{name} is {shape[1]} x {shape[0]} pixels: a whole sphere is twice as wide as "
-            "high, and nothing in the file tells which part this is. Say how wide it sees "
+            f"high, and {why or 'nothing in the file tells which part this is'}. Say how wide it sees "
             "(--view 200deg, its middle on the horizon), or where it lies in the full panorama, in a "
             "scene file: [panorama] full_width = 12000, left = 0, top = 1500."
         )

@@ -90,29 +90,30 @@ def _read_fields(packet: bytes) -> Mapping[str, str]:
 
 def panorama_of(
     packet: bytes | str | None, shape: tuple[int, int]
-) -> tuple[PanoramaPlace | None, tuple[str, ...]]:
+) -> tuple[PanoramaPlace | None, str, tuple[str, ...]]:
     """Return where a picture's XMP packet says it lies on the sphere, and notes for people.
 
     shape : rows and columns of the picture as it was read. None when the packet does not call it
-    equirectangular; what is absurd or contradicts itself is left out with a note.
+    equirectangular. What is absurd or contradicts itself is left out with a note; if that leaves an
+    equirectangular picture without a place, the text between says why.
     """
     if not packet:
-        return None, ()
+        return None, "", ()
     try:
         fields = _read_fields(packet.encode() if isinstance(packet, str) else bytes(packet))
     except _NotReadError as reason:
-        return None, (f"its XMP data are not used: {reason}",)
+        return None, "", (f"its XMP data are not used: {reason}",)
     kind = fields.get("ProjectionType", "").lower()
     if kind != "equirectangular":
         named = f"its XMP data call it a panorama of kind {kind!a}, which is not read"
-        return None, (named,) if kind else ()
+        return None, "", (named,) if kind else ()
     numbers, notes = _numbers(fields)
     pose = _pose(numbers, notes)
     place, why = _placed(numbers, shape)
     if place is None:
-        notes.append(f"the panorama's place in its XMP data is not used: {why}")
         if not is_full_sphere(shape):
-            return None, tuple(notes)
+            return None, f"the panorama's place in its XMP data cannot be used: {why}", tuple(notes)
+        notes.append(f"taken as a whole sphere: its place in its XMP data cannot be used: {why}")
         place = full_sphere(shape)
     place = replace(
         place,
@@ -120,7 +121,7 @@ def panorama_of(
         roll_deg=pose["PoseRollDegrees"],
         heading_deg=numbers.get("PoseHeadingDegrees"),
     )
-    return place, tuple(notes)
+    return place, "", tuple(notes)
 
 
 def _numbers(fields: Mapping[str, str]) -> tuple[dict[str, float], list[str]]:

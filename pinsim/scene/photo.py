@@ -27,7 +27,8 @@ class Photo:
     what it tells cannot be used. notes : what was decided at the door, for people.
     clips : whether the file had a highest code, so that what was brighter than it is lost.
     lift : what brightens clipped parts, if that was asked for.
-    panorama : where the file says it lies on the sphere, if it says it is a panorama.
+    panorama : where the file says it lies on the sphere, if it says it is a panorama; panorama_note :
+    why what it says cannot be used.
     """
 
     codes: NDArray[Any]
@@ -39,6 +40,7 @@ class Photo:
     clips: bool = False
     lift: HighlightLift | None = None
     panorama: PanoramaPlace | None = None
+    panorama_note: str = ""
 
     @property
     def shape(self) -> tuple[int, int]:

@@ -291,7 +291,8 @@ def _look_at(top: Table) -> tuple[float, float, float]:
 def _settle_panorama(plan: dict[str, Any], photo: Photo) -> tuple[PanoramaPlace | None, list[str]]:
     """Settle the plan's projection and view; return where a panorama lies, and notes."""
     told, view = plan.get("panorama"), plan.get("view")
-    found = plan["projection"] is None and (photo.panorama is not None or told is not None)
+    by_file = photo.panorama is not None or bool(photo.panorama_note)
+    found = plan["projection"] is None and (by_file or told is not None)
     plan["projection"] = plan["projection"] or ("equirectangular" if found else "rectilinear")
     if plan["projection"] == "rectilinear":
         if plan.get("look_at") is not None:
@@ -309,11 +310,12 @@ def _settle_panorama(plan: dict[str, Any], photo: Photo) -> tuple[PanoramaPlace 
         view_deg=view,
         told=told,
         from_file=photo.panorama,
+        why=photo.panorama_note,
         name=str(plan["photo"]),
     )
     plan["view"] = min(high, high * photo.shape[1] / place.full_width_px)
     notes = [note] if note else []
-    if found and photo.panorama is not None:
+    if found and by_file:
         part = 100.0 * min(1.0, plan["view"] / 360.0 * photo.shape[0] / place.full_height_px)
         share = "a whole sphere" if part > 99.0 else f"{part:.0f} % of a sphere"
         notes.append(f"taken as a panorama, {share}, by its XMP data (--projection to change)")

@@ -141,13 +141,19 @@ export function buildControls(bench, start, ask) {
       // Shows each message beside its field; returns whether all had one.
       let all = true;
       for (const [key, text] of Object.entries(errors)) {
-        const field = fields.find((f) => f.key === key && !f.element.hidden && f.element.isConnected);
+        const field = fields.findLast((f) => f.key === key && !f.element.hidden && f.element.isConnected);
         if (field) field.refuse(text);
         else all = false;
       }
       return all;
     },
-    accept() { for (const field of fields) if (!field.message.hidden) field.refuse(""); },
+    accept(state, context) {
+      for (const field of fields) {
+        if (field.message.hidden) continue;
+        field.refuse("");
+        field.show(state, context);
+      }
+    },
   };
 }
 

@@ -34,8 +34,8 @@ class Field {
   refuse(text) {
     this.message.textContent = text || "";
     this.message.hidden = !text;
-    for (const input of this.element.querySelectorAll("input, select")) {
-      if (text) {
+    for (const [i, input] of this.element.querySelectorAll("input, select").entries()) {
+      if (text && i === 0) {
         input.setAttribute("aria-invalid", "true");
         input.setAttribute("aria-describedby", this.message.id);
       } else {
@@ -118,7 +118,7 @@ export class Quantity extends Field {
     if (Number.isFinite(place) && !inHand) this.slider.value = Math.min(STEPS, Math.max(0, Math.round(place)));
     this.shown = known ? this.text(value) : "";
     this.slider.setAttribute("aria-valuetext", this.shown || "not told");
-    if (document.activeElement !== this.input || this.input.value.trim() === "" || !this.input.hasAttribute("aria-invalid")) this.input.value = this.shown;
+    if (!this.input.hasAttribute("aria-invalid")) this.input.value = this.shown; // what was refused stays, to be mended
   }
 }
 

@@ -63,7 +63,7 @@ async function begin() {
     shown(about, fine, state) {
       if (same(state, bench.state)) {
         showError("");
-        controls.accept();
+        controls.accept(bench.state, context);
       }
       by("caption").textContent = captionText(about);
       by("paper").setAttribute("aria-label", `The picture: ${about.description || captionText(about)}`);

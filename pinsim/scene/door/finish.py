@@ -71,7 +71,7 @@ def finished(read: Decoded, path: Path) -> Photo:
         notes.append(note)
         to_srgb = None
     focal_px = read.focal.px
-    panorama, panorama_notes = panorama_of(read.xmp, (codes.shape[0], codes.shape[1]))
+    panorama, why, panorama_notes = panorama_of(read.xmp, (codes.shape[0], codes.shape[1]))
     notes += panorama_notes
     photo = Photo(
         codes=codes,
@@ -81,6 +81,7 @@ def finished(read: Decoded, path: Path) -> Photo:
         view_note=read.focal.note,
         clips=read.clips and not floating,
         panorama=panorama,
+        panorama_note=why,
     )
     if not floating:
         notes.append(_outside_note(photo))
