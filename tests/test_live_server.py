@@ -717,6 +717,8 @@ def test_a_port_that_is_taken_is_told_in_one_line(live, capsys):
         (["sample:lan"], "Did you mean 'lane'"),
         (["sample:lane", "no-such.toml"], "no such file"),
         (["sample:lane", "--hole", "0,3mm"], "cannot read"),
+        (["sample:lane", "--map-step", "5cm"], "needs a distance map"),
+        (["sample:lane", "--distance", "0.1mm"], "at least 1 mm"),
         (["sample:lane", "--distance-map", "none.png"], "no such file"),
     ],
 )

@@ -317,7 +317,7 @@ def test_a_leaning_panorama_is_levelled():
 
 
 def test_a_rolled_panorama_is_levelled():
-    """As roll increases, the horizon turns counterclockwise in the picture (field reference)."""
+    """As roll increases, the horizon turns counterclockwise in the picture (from memory)."""
     place = PanoramaPlace(full_width_px=720.0, full_height_px=360.0, roll_deg=90.0)
     # The horizon's right side has turned up: what is really 10 degrees to the right is at the top.
     scene = panorama_scene(spot_at(0.0, 10.0), panorama=place)
@@ -581,7 +581,7 @@ def test_a_part_cut_from_a_panorama_is_asked_for_its_place(run, tmp_path):
     assert "it was cropped since. Say how wide it sees (--view 200deg" in err
     code, out, err = run("preview", "round.jpg", *CAMERA, "--view", "90deg")
     assert (code, err) == (0, "")
-    assert "taken as a panorama, 6 % of a sphere" in out
+    assert "taken as a panorama, 3 % of a sphere" in out
 
 
 def test_what_is_typed_comes_before_the_metadata(tmp_path):

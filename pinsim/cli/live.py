@@ -77,9 +77,12 @@ def _given(scene: str | None, camera: str | None, given: Mapping[str, Any]) -> "
     """Return what the line gave; what is wrong with it is refused here."""
     from pinsim.camera.design_file import read_traced_from
     from pinsim.cli.designs import make_camera
-    from pinsim.errors import SceneError
+    from pinsim.errors import DesignError, SceneError
     from pinsim.live.designs import FIRST_CAMERA, FIRST_SCENE, Given
+    from pinsim.live.refused import RefusedError
+    from pinsim.live.state import camera_keys, read_state
     from pinsim.samples import PREFIX, resolve
+    from pinsim.scene.distance_table import distances_from_options
 
     typed = given["hole_mm"] is not None and given["focal_mm"] is not None
     design = make_camera(
@@ -101,7 +104,13 @@ def _given(scene: str | None, camera: str | None, given: Mapping[str, Any]) -> "
         state["map"] = "map-given"
     if "distance_mm" in state and state["distance_mm"] == float("inf"):
         state["distance_mm"] = "infinity"
+    distances_from_options(given)  # a step without a map cannot be mended on the page
     file = Path(camera) if camera and not camera.startswith(PREFIX) else None
+    own = camera_keys(design, traced="given", materials_of="given")
+    try:
+        read_state({**own, **state}, {"given": design}, scene or FIRST_SCENE)
+    except RefusedError as problem:
+        raise DesignError(str(problem)) from None
     return Given(
         scene=scene or FIRST_SCENE,
         map=None if given["distance_map"] is None else Path(given["distance_map"]),

@@ -87,7 +87,9 @@ class Guard:
     def __init__(self, app: App, *, keys: Keys, port: int) -> None:
         self._app = app
         self._keys = keys
-        self._hosts = {f"127.0.0.1:{port}", f"localhost:{port}"}
+        # A browser leaves the port of the web out.
+        ends = (f":{port}", "") if port == 80 else (f":{port}",)
+        self._hosts = {f"{name}{end}" for name in ("127.0.0.1", "localhost") for end in ends}
         self._cookie = f"pinsim-{port}"  # cookies know no ports
 
     async def __call__(self, scope: Message, receive: Receive, send: Send) -> None:

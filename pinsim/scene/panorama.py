@@ -198,8 +198,8 @@ def settled_place(
     """Return where a panorama lies, by what comes first, and a note where one is due.
 
     shape : rows and columns of the photo. A told place comes first, then the angle of view, then the
-    file's own fields, which `why` tells to be unusable, then that the picture is a whole sphere. Raises SceneError, in one line, when
-    none of them settles it.
+    file's own fields, which `why` tells to be unusable, then that the picture is a whole sphere.
+    Raises SceneError, in one line, when none of them settles it.
     """
     pose = from_file or full_sphere(shape)
     note = ""

@@ -198,7 +198,8 @@ export class BoxDrawing {
     if (part === "hole" && state.hole_h_mm && (state.shape === "oval" || state.shape === "slit")) {
       patch.hole_h_mm = Number((state.hole_h_mm * tidy / state.hole_mm).toFixed(4)); // keeps its form
     }
-    this.bench.change(patch, { moving, by: this });
+    this.bench.change(patch, { moving: true, by: this });
+    if (!moving) this.bench.settle(part);
     this.draw();
   }
 }

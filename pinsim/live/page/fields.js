@@ -99,7 +99,7 @@ export class Quantity extends Field {
 
   async #typed() {
     const typed = this.input.value.trim();
-    if (typed === this.shown) return;
+    if (typed === this.shown && !this.input.hasAttribute("aria-invalid")) return;
     this.shown = typed;
     try {
       const { value } = await parse(this.kind, typed, this.key);

@@ -1,4 +1,12 @@
 // Puts the page together: one bench, and everything that follows when it changes.
+//
+// state.js     what is drawn, what is pinned, undo, the address      api.js     every word with the server
+// controls.js  the groups of controls, made of fields.js             print.js   the picture, divider, loupe, pointer
+// box.js       the box cut open, to scale, with handles              figures.js figures, best hole, differences; plot.js
+// photos.js    photos and maps chosen or dropped                     keep.js    designs and files in and out
+// words.js     how figures are written; markup that escapes
+//
+// No figure is computed here: a length that is drawn is the design's own, everything else the server told.
 
 import * as api from "./api.js";
 import { BoxDrawing } from "./box.js";
@@ -178,7 +186,7 @@ async function begin() {
   by("swap").addEventListener("click", () => {
     const { state, pinned } = bench;
     bench.replace(pinned, state, "swap");
-    bench.settle("swap");
+    bench.settle();
   });
   for (const radio of document.querySelectorAll('[name="cut"]')) {
     radio.addEventListener("change", () => { drawing.above = by("cut-above").checked; drawing.draw(); });
@@ -201,7 +209,7 @@ async function begin() {
     const again = fromAddress(location.hash, start.defaults);
     if (again && !(same(again.state, bench.state) && same(again.pinned, bench.pinned))) {
       bench.replace(again.state, again.pinned, "address");
-      bench.settle("address");
+      bench.settle();
     }
   });
 

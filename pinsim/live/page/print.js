@@ -285,7 +285,8 @@ export class Print {
     const upright = look === "upright" ? 1 : -1;
     const turned = ((yaw + sideways * right * across + 540) % 360 + 360) % 360 - 180;
     const raised = Math.min(90, Math.max(-90, pitch + upright * up * high));
-    this.bench.change({ yaw_deg: Number(turned.toFixed(1)), pitch_deg: Number(raised.toFixed(1)) }, { moving });
+    this.bench.change({ yaw_deg: Number(turned.toFixed(1)), pitch_deg: Number(raised.toFixed(1)) }, { moving: true });
+    if (!moving) this.bench.settle("turn");
   }
 
   #leave() {

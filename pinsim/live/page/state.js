@@ -67,12 +67,12 @@ export class Bench extends EventTarget {
       this.state = { ...this.state, ...patch };
       this.#tell(keys, by);
     }
-    if (!moving) this.settle(Object.keys(patch).join());
+    if (!moving) this.settle();
   }
 
   pin(pinned) {
     this.pinned = pinned;
-    this.settle("pin");
+    this.settle();
     this.#tell(["pinned"], "pin");
   }
 
@@ -84,11 +84,11 @@ export class Bench extends EventTarget {
     this.#tell(keys, by);
   }
 
-  settle(name) {
-    // One step of undo; quick steps of one and the same control count as one.
+  settle(name = null) {
+    // One step of undo; quick steps of a slider, which tells its name, count as one.
     if (same(this.kept, { state: this.state, pinned: this.pinned })) return;
     const now = performance.now();
-    if (!(name === this.lastKey && now - this.lastTime < 700)) this.past.push(this.kept);
+    if (!(name !== null && name === this.lastKey && now - this.lastTime < 700)) this.past.push(this.kept);
     if (this.past.length > MOST_STEPS) this.past.shift();
     this.future = [];
     this.lastKey = name;
@@ -101,7 +101,7 @@ export class Bench extends EventTarget {
   redo() { this.#step(this.future, this.past, "redo"); }
 
   #step(from, to, by) {
-    this.settle("before");
+    this.settle();
     if (!from.length) return;
     to.push(this.kept);
     this.kept = from.pop();
