@@ -364,7 +364,8 @@ def test_a_screen_reader_finds_slider_table_and_verdict(visit, two):
     assert re.search(r'img "A: .*Box & 0.12', tree)
 
 
-AXE = Path(os.environ.get("AXE_CORE", ".venv/node/node_modules/axe-core/axe.min.js"))
+ROOT = Path(__file__).parent.parent
+AXE = Path(os.environ.get("AXE_CORE", ROOT / ".ci/node/node_modules/axe-core/axe.min.js"))
 
 
 @pytest.mark.skipif(not AXE.exists(), reason="axe-core is not here (npm install axe-core)")
