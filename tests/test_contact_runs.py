@@ -50,6 +50,10 @@ def plain(run, photo):
     return (photo.parent / "plain.png").read_bytes()
 
 
+def listen_to_ctrl_c():
+    signal.signal(signal.SIGINT, signal.SIG_DFL)
+
+
 def started(folder, *arguments):
     """Start the command line as a process of its own."""
     return subprocess.Popen(
@@ -59,6 +63,8 @@ def started(folder, *arguments):
         stderr=subprocess.PIPE,
         stdout=subprocess.PIPE,
         text=True,
+        # What is started in the background of a shell ignores Ctrl-C, and its children inherit that.
+        preexec_fn=listen_to_ctrl_c,
     )
 
 
