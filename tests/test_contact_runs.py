@@ -64,7 +64,7 @@ def started(folder, *arguments):
         stdout=subprocess.PIPE,
         text=True,
         # What is started in the background of a shell ignores Ctrl-C, and its children inherit that.
-        preexec_fn=listen_to_ctrl_c,
+        preexec_fn=listen_to_ctrl_c,  # noqa: PLW1509  (no threads here yet)
     )
 
 
