@@ -16,12 +16,12 @@ from numpy.typing import NDArray
 
 from pinsim.errors import SceneError
 from pinsim.scene.photo import Photo
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 Mask = NDArray[np.bool_]
 
 ASPECT_TOLERANCE = 0.01
-_THREADS = 2
 
 # What is a jump: a difference more than twice what the slope beside it explains, plus this share of
 # the nearer side's 1/distance and of the nearest's of all. Less is not seen through a bare hole.
@@ -133,7 +133,7 @@ def fitted(inverse: Float, photo: Photo) -> Float:
         columns = _span(across, corner[1], tile)
         _settle(result, photo, sides, (rows, columns), (down, across), scale)
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for _ in pool.map(settle, _tiles_with(sides[..., _SPLIT] > 0.0, tile)):
             pass
     return result
@@ -223,7 +223,7 @@ def _sides(inverse: Float, photo: Photo) -> Float | None:
         r, c = rows[start : start + _LIST_LENGTH], columns[start : start + _LIST_LENGTH]
         known[r, c] = _two_sides(clean, colours, (r, c), least)
 
-    with ThreadPoolExecutor(_THREADS) as pool:
+    with ThreadPoolExecutor(THREADS) as pool:
         for _ in pool.map(part, range(0, rows.size, _LIST_LENGTH)):
             pass
     return known
