@@ -838,6 +838,7 @@ def test_it_outlasts_a_crowd_and_a_thousand_wrong_requests():
     try:
         start = server.client.get("/api/start").json()["state"]
         asyncio.run(_crowd(server, start, rng, 40, 8))
+        _nonsense(server, start, rng, 100)  # odd uploads load libraries for good, once
         _everyday(server, start)
         before = _resident(server.process.pid)
         told = asyncio.run(_crowd(server, start, rng, 200, 20))
