@@ -640,8 +640,8 @@ LINES = {
 def test_the_line_and_the_scene_file_say_the_same(holed, load, here, monkeypatch, line):
     import click
 
-    from pinsim.cli.designs import load_scene
     from pinsim.cli.preview import command
+    from pinsim.cli.scenes import load_scene
 
     monkeypatch.chdir(here)
     written = load(LINES[line])

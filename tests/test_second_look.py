@@ -60,7 +60,7 @@ def test_a_second_look_transforms_nothing_again(monkeypatch: pytest.MonkeyPatch)
         raise AssertionError("made again")
 
     monkeypatch.setattr(road, "project", never)
-    monkeypatch.setattr(spread.fft, "rfft2", never)
+    monkeypatch.setattr(spread, "rfft2", never)
     pinsim.preview(place, with_hole(0.31), width_px=300, averaged=True)
 
 

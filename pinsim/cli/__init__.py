@@ -2,7 +2,7 @@
 
 __init__.py     the table of commands, and how every error becomes one line
 options.py      quantities and the options that commands share
-designs.py      what was typed -> Scenes and Cameras
+scenes.py, designs.py  what was typed -> Scenes and Cameras
 many.py         what was typed for a contact sheet -> its frames, drawn and told of
 show.py         progress bars, tables and what is printed at the end
 preview.py, compare.py, contact_sheet.py, numbers.py, exposure.py, materials.py, trace.py, live.py

@@ -52,10 +52,10 @@ def command(
         assumed,
         default_output,
         input_files,
-        load_scene,
         make_camera,
         make_cameras,
     )
+    from pinsim.cli.scenes import load_scene
     from pinsim.cli.show import progress_bar, tell
     from pinsim.errors import DesignError
     from pinsim.files import check_target, keep_inputs

@@ -1,4 +1,4 @@
-"""What was typed on the line to Scenes and Cameras."""
+"""What was typed on the line to Cameras, and to names of files."""
 
 import itertools
 import re
@@ -12,26 +12,10 @@ from pinsim.errors import DesignError
 from pinsim.exposure import LightLevel
 from pinsim.material import Catalogue
 from pinsim.samples import PREFIX, names
-from pinsim.scene import Scene
-from pinsim.scene.distance_table import distances_from_options
 from pinsim.units import format_length, length_mm
 
 _SIZE = re.compile(r"(?P<width>[\d.]+\s*[a-z]+)\s*x\s*(?P<height>[\d.]+\s*[a-z]+)")
 DEFAULT_FILM = "6x6"
-
-
-def load_scene(path: str, options: Mapping[str, Any]) -> Scene:
-    """Return a scene from its path and the scene options."""
-    return Scene.load(
-        path,
-        horizontal_view_deg=options.get("view_deg"),
-        distance_mm=options.get("distance_mm"),
-        distances=distances_from_options(options),
-        projection=options.get("projection"),
-        beyond=options.get("beyond"),
-        look_at_deg=options.get("look_at_deg"),
-        highlight_lift_stops=options.get("highlight_lift_stops"),
-    )
 
 
 def make_camera(

@@ -17,7 +17,8 @@ from pinsim.batch.spool import Source
 from pinsim.batch.store import Store, read_about
 from pinsim.batch.workers import lanes_for, worker_count
 from pinsim.camera import Camera
-from pinsim.cli.designs import assumed, default_output, input_files, load_scene, make_camera
+from pinsim.cli.designs import assumed, default_output, input_files, make_camera
+from pinsim.cli.scenes import load_scene
 from pinsim.errors import DesignError, OutputError, PinsimError
 from pinsim.exposure import time_text
 from pinsim.files import check_target, keep_inputs

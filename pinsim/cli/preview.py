@@ -3,7 +3,7 @@
 import contextlib
 import importlib
 import math
-import threading
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -49,45 +49,20 @@ def command(
     sample:NAME; or type the camera: --hole 0.30mm --focal-length 60mm --film 6x6. The picture prints
     at the film's true size.
     """
-    from pinsim.cli.designs import (
-        assumed,
-        camera_stem,
-        default_output,
-        input_files,
-        load_scene,
-        make_camera,
-    )
-    from pinsim.cli.memory import keep_freed_memory
-    from pinsim.cli.show import progress_bar, tell
-    from pinsim.errors import DesignError
-    from pinsim.files import EXPOSURE_SUFFIXES, check_bits, check_target, keep_inputs
-    from pinsim.samples import PREFIX
+    from pinsim.cli.memory import tune_for_one_picture
+    from pinsim.cli.scenes import load_scene
 
-    keep_freed_memory()
-    seed = given["seed"]
-    if seed is not None and not 0 <= seed < 2**63:
-        raise DesignError(f"--seed is {seed}; it must be a whole number from 0 on.")
-    if given["grain"] and seed is None:
-        seed = 1
-    design = make_camera(
-        camera, hole_mm=given["hole_mm"], focal_mm=given["focal_mm"], options=given
-    )
-    stem = f"{Path(scene.removeprefix(PREFIX)).stem}-{camera_stem(camera, design)}"
-    suffixes: tuple[str, ...] = EXPOSURE_SUFFIXES
-    if given["bracket"] is not None:
-        suffixes = _prepare_bracket(given, design)
-        stem += "-bracket"
-    target = Path(output) if output else default_output(stem)
-    inputs = input_files(scene, camera, given["distance_map"])
-    check_target(target, overwrite=overwrite, suffixes=suffixes, inputs=inputs)
-    check_bits(target.suffix.lower(), given["bits"])
-    # The renderer's libraries and kernels take as long as a large photo to decode: both at once.
-    loading = threading.Thread(target=_make_ready, args=(design, given))
-    loading.start()
-    try:
-        place = load_scene(scene, given)
-    finally:
-        loading.join()
+    tune_for_one_picture()
+    # A large photo takes as long to decode as all the rest to get ready: both at once.
+    with ThreadPoolExecutor(1) as aside:
+        reading = aside.submit(load_scene, scene, given)
+        design, target, seed = _prepare(scene, camera, output, overwrite, given)
+        _make_ready(design, given)
+        place = reading.result()
+    from pinsim.cli.designs import assumed
+    from pinsim.cli.show import progress_bar, tell
+    from pinsim.files import keep_inputs
+
     keep_inputs(target, place.files)
     from pinsim.render.develop import LOOK_TEXT
     from pinsim.render.preview import preview
@@ -123,6 +98,35 @@ def command(
             *(f"note: {note}" for note in (*assumed([camera], given), *picture.notes)),
         ]
     )
+
+
+def _prepare(
+    scene: str, camera: str | None, output: str | None, overwrite: bool, given: dict[str, Any]
+) -> tuple["Camera", Path, int | None]:
+    """Return the design, where its picture goes and the grain's seed; refuse what cannot be."""
+    from pinsim.cli.designs import camera_stem, default_output, input_files, make_camera
+    from pinsim.errors import DesignError
+    from pinsim.files import EXPOSURE_SUFFIXES, check_bits, check_target
+    from pinsim.samples import PREFIX
+
+    seed = given["seed"]
+    if seed is not None and not 0 <= seed < 2**63:
+        raise DesignError(f"--seed is {seed}; it must be a whole number from 0 on.")
+    if given["grain"] and seed is None:
+        seed = 1
+    design = make_camera(
+        camera, hole_mm=given["hole_mm"], focal_mm=given["focal_mm"], options=given
+    )
+    stem = f"{Path(scene.removeprefix(PREFIX)).stem}-{camera_stem(camera, design)}"
+    suffixes: tuple[str, ...] = EXPOSURE_SUFFIXES
+    if given["bracket"] is not None:
+        suffixes = _prepare_bracket(given, design)
+        stem += "-bracket"
+    target = Path(output) if output else default_output(stem)
+    inputs = input_files(scene, camera, given["distance_map"])
+    check_target(target, overwrite=overwrite, suffixes=suffixes, inputs=inputs)
+    check_bits(target.suffix.lower(), given["bits"])
+    return design, target, seed
 
 
 def _make_ready(design: "Camera", given: dict[str, Any]) -> None:

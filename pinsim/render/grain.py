@@ -10,7 +10,6 @@ import math
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import fft, special
 
 from pinsim.material import Grain, Sensor
 from pinsim.threads import THREADS
@@ -28,6 +27,8 @@ def noise_field(
 
     Its spread is that of means over pixels, so larger pixels flicker less.
     """
+    from scipy import fft
+
     field = rng.standard_normal(shape, dtype=np.float32)
     reach_px = grain.correlation_um / pitch_um
     if reach_px > _FLAT:
@@ -51,6 +52,8 @@ def _seen_through_spot(reach_um: float) -> float:
     if reach_um == 0.0:
         return 1.0
     z = 0.5 * (_SPOT_UM / reach_um) ** 2
+    from scipy import special
+
     return float(1.0 - special.ive(0, z) - special.ive(1, z))
 
 

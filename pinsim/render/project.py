@@ -15,7 +15,10 @@ Float = NDArray[np.float32]
 
 # Film that looks sideways or back, this close to the hole's plane: a flat photo has nothing there.
 _LEAST_AHEAD = 1e-3
-_STRIP = 1024  # photo columns linearised at once: the strip stays in the processor's cache
+# Photo columns linearised at once, for so many groups of film rows: the strip stays in the processor's
+# cache, and few photo rows are linearised twice.
+_STRIP = 512
+_TOGETHER = 4
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -69,11 +72,11 @@ def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
     planes = np.empty((3, *plan.padded), np.float32)
     needed = slice(min(b.take.start for b in across), max(b.take.stop for b in across))
 
-    def lay(block: Block) -> None:
-        _lay_rows(scene, block, across, needed, planes)
+    def lay(start: int) -> None:
+        _lay_rows(scene, down[start : start + _TOGETHER], across, needed, planes)
 
     with ThreadPoolExecutor(THREADS) as pool:
-        for _ in pool.map(lay, down):
+        for _ in pool.map(lay, range(0, len(down), _TOGETHER)):
             pass
     inside = plan.inside
     seen_rows = (row[inside[0]] >= -0.5) & (row[inside[0]] <= rows - 0.5)
@@ -88,23 +91,28 @@ def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
 
 
 def _lay_rows(
-    scene: Scene, block: Block, across: list[Block], needed: slice, planes: Float
+    scene: Scene, blocks: list[Block], across: list[Block], needed: slice, planes: Float
 ) -> None:
-    """Resample one group of film rows: down the photo first, as that leaves least to do."""
-    height = block.to.stop - block.to.start
-    width = needed.stop - needed.start
+    """Resample some groups of film rows: down the photo first, as that leaves least to do."""
+    to = slice(blocks[0].to.start, blocks[-1].to.stop)
+    taken = slice(min(b.take.start for b in blocks), max(b.take.stop for b in blocks))
+    height, width = to.stop - to.start, needed.stop - needed.start
     tall = np.empty((height, width, 3), np.float32)
     for start in range(needed.start, needed.stop, _STRIP):
         columns = slice(start, min(start + _STRIP, needed.stop))
-        light = scene.photo.linear(block.take, columns)
-        strip = block.weights @ light.reshape(light.shape[0], -1)
-        tall[:, columns.start - needed.start : columns.stop - needed.start] = strip.reshape(
-            height, -1, 3
-        )
+        light = scene.photo.linear(taken, columns).reshape(taken.stop - taken.start, -1)
+        across_strip = slice(columns.start - needed.start, columns.stop - needed.start)
+        for block in blocks:
+            strip = (
+                block.weights
+                @ light[block.take.start - taken.start : block.take.stop - taken.start]
+            )
+            rows = slice(block.to.start - to.start, block.to.stop - to.start)
+            tall[rows, across_strip] = strip.reshape(strip.shape[0], -1, 3)
     flat = np.ascontiguousarray(np.moveaxis(tall, -1, 0)).reshape(3 * height, width)
     for part in across:
         take = slice(part.take.start - needed.start, part.take.stop - needed.start)
-        planes[:, block.to, part.to] = (flat[:, take] @ part.weights.T).reshape(3, height, -1)
+        planes[:, to, part.to] = (flat[:, take] @ part.weights.T).reshape(3, height, -1)
 
 
 def _project_bent(scene: Scene, plan: RenderPlan) -> FilmView:

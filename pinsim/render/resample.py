@@ -55,7 +55,12 @@ class Block:
 
 
 def fold(index: NDArray[np.intp], size: int, beyond: str) -> NDArray[np.intp]:
-    """Return where the photo is read for whole positions that may lie beyond it."""
+    """Return where the photo is read for whole positions that may lie beyond it.
+
+    Where none does, these are the positions themselves.
+    """
+    if index.size and index.min() >= 0 and index.max() < size:
+        return index
     if beyond == "mirror":
         index = np.mod(index, 2 * size)
         return np.where(index < size, index, 2 * size - 1 - index)
@@ -93,7 +98,10 @@ def make_blocks(
         low, high = int(source.min()), int(source.max()) + 1
         dense = np.zeros((middle.size, high - low))
         rows = np.broadcast_to(np.arange(middle.size)[:, None], source.shape)
-        np.add.at(dense, (rows, source - low), weight)
+        if source is index:
+            dense[rows, source - low] = weight
+        else:
+            np.add.at(dense, (rows, source - low), weight)
         blocks.append(
             Block(slice(start, start + middle.size), slice(low, high), dense.astype(np.float32))
         )

@@ -14,9 +14,9 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import fft
 
 from pinsim.progress import Progress, Reporter, ignore
+from pinsim.render.fourier import irfft2, rfft2
 from pinsim.render.illuminate import own_shade
 from pinsim.render.kept import Kept
 from pinsim.render.kernels import BandKernels, Kernels, PolarReader, Values, chebyshev_values
@@ -134,7 +134,7 @@ def _add_mode(
     covered = None
     if cover is not None:
         white = np.ones(planes.shape[1:], np.float32) if field is None else field
-        covered = np.asarray(fft.rfft2(white))
+        covered = rfft2(white)
     spectra: dict[int, Spectrum] = {}
     for number, band in enumerate(kernels.bands):
         same = [other.channel == band.channel for other in kernels.bands]
@@ -143,7 +143,7 @@ def _add_mode(
             spectra[band.band] = kept[mode, band.band]
         elif band.band not in spectra:
             plane = planes[band.band]
-            spectra[band.band] = np.asarray(fft.rfft2(plane if field is None else plane * field))
+            spectra[band.band] = rfft2(plane if field is None else plane * field)
             if kept is not None:
                 kept[mode, band.band] = spectra[band.band]
         kernel = grid.mean(band) if mode < 0 else grid.mode(band, mode)
@@ -155,7 +155,7 @@ def _add_mode(
 
 
 def _inverse(spectra: Spectrum, plan: RenderPlan) -> Float:
-    return np.asarray(fft.irfft2(spectra, s=plan.padded, workers=THREADS, overwrite_x=True))
+    return irfft2(spectra, plan.padded, threads=THREADS)
 
 
 class _Fields:
@@ -196,9 +196,9 @@ class _Frequencies:
     def __init__(self, plan: RenderPlan, compensate: bool) -> None:
         rows, columns = plan.padded
         pitch = plan.pitch_mm
-        across = fft.rfftfreq(columns, pitch)
+        across = np.asarray(np.fft.rfftfreq(columns, pitch), np.float64)
         # Rows run down and v up, so a row frequency is minus a film frequency.
-        down = -fft.fftfreq(rows, pitch)
+        down = np.asarray(-np.fft.fftfreq(rows, pitch), np.float64)
         self.shape = (rows, across.size)
         self._window = [
             _pixel_response(axis * pitch, plan.averaged, compensate).astype(np.float32)
@@ -267,7 +267,7 @@ class _Frequencies:
         np.subtract(wide[1:-1], wide[:-2], out=step[:-2])
 
         def rows(some: slice) -> Kernel:
-            cell, share = (part[some] for part in self._cells_down)
+            cell, share = self._cells_down[0][some], self._cells_down[1][some]
             kernel: Kernel = np.take(step, cell, axis=0)
             kernel *= share
             kernel += np.take(wide, cell, axis=0)

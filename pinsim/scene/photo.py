@@ -5,6 +5,7 @@ photo is 72 MB of codes but 288 MB of light, and most designs need no more than 
 """
 
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
@@ -66,12 +67,33 @@ class Photo:
         if self.decode is None:
             return np.asarray(part, np.float32)
         # mode="clip" spares numpy a checked copy; no code can be out of range.
+        if self.decode.ndim == 1 and part.dtype == np.uint8:
+            return _two_at_once(part, self.decode)
         if self.decode.ndim == 1:
             return np.take(self.decode, part, mode="clip")
         light = np.empty(part.shape, np.float32)
         for channel, table in enumerate(self.decode):
             light[..., channel] = np.take(table, part[..., channel], mode="clip")
         return light
+
+
+def _two_at_once(codes: NDArray[np.uint8], decode: NDArray[np.float32]) -> NDArray[np.float32]:
+    """Return np.take(decode, codes), two neighbours at a time: numpy's time goes by the index."""
+    whole = np.ascontiguousarray(codes)
+    light = np.empty(whole.shape, np.float32)
+    flat, result = whole.reshape(-1), light.reshape(-1)
+    even = flat.size - flat.size % 2
+    pairs = _light_of_pairs(decode.tobytes())
+    np.take(pairs, flat[:even].view(np.uint16), out=result[:even].view(pairs.dtype), mode="clip")
+    result[even:] = decode[flat[even:]]
+    return light
+
+
+@lru_cache(maxsize=4)
+def _light_of_pairs(decode: bytes) -> NDArray[np.complex64]:
+    """Return the light of each two codes that a 16-bit word of this machine holds, side by side."""
+    codes = np.arange(1 << 16, dtype=np.uint16).view(np.uint8).reshape(-1, 2)
+    return np.frombuffer(decode, np.float32)[codes].view(np.complex64)[:, 0]
 
 
 def photo_from_linear(light: NDArray[Any], *, view_deg: float | None = None) -> Photo:
