@@ -37,6 +37,12 @@ class ChiefRays:
         """Right and up per mm along the axis, (..., 2)."""
         return np.asarray(self.direction[..., :2] / self.direction[..., 2:])
 
+    def one(self, place: tuple[int, ...]) -> "ChiefRays":
+        """Return the ray at a place of the common shape."""
+        return ChiefRays(
+            self.distance_mm[place], self.direction[place], self.shift[place], self.falloff[place]
+        )
+
     def focus(self, object_distance_mm: ArrayLike) -> Array:
         """Return Q, (..., 2, 2), 1/mm, for objects at a distance along the axis.
 

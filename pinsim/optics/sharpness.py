@@ -323,32 +323,34 @@ def light_ray_otf(
     distance_mm: float = math.inf,
     quick: bool = False,
 ) -> NDArray[np.complex128]:
-    """Return the transfer function of one chief ray averaged over a light.
+    """Return the transfer functions of chief rays averaged over a light.
 
-    frequency : (n, 2). quick : an error of 1e-6 is allowed. Returns (n,); of a mirrored opening it is
-    real, negative where light and dark change places.
+    frequency : (n, 2); rays of shape (...). quick : an error of 1e-6 is allowed. Returns (..., n); of
+    a mirrored opening it is real, negative where light and dark change places.
     """
-    if isinstance(opening, Ellipse) and float(rays.falloff) > 0.0:
+    if isinstance(opening, Ellipse):
         curves = opening.otf_in_colours(
             light.wavelengths_nm * 1e-6,
-            frequency @ rays.shift.T,
+            frequency @ np.swapaxes(rays.shift, -1, -2),
             rays.focus(distance_mm),
             plate_thickness_mm * rays.tangent,
             quick=quick,
         )
-        return np.asarray(light.shares @ curves, np.complex128)
-    total = np.zeros(len(frequency), np.complex128)
-    for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
-        total += share * ray_otf(
-            frequency,
-            rays=rays,
-            opening=opening,
-            plate_thickness_mm=plate_thickness_mm,
-            distance_mm=distance_mm,
-            wavelength_nm=float(wavelength),
-            quick=quick,
-        )
-    return total
+        total = np.tensordot(light.shares, curves, axes=1)
+        return np.where(rays.falloff[..., None] > 0.0, total, 0.0).astype(np.complex128)
+    each = np.zeros((*rays.falloff.shape, len(frequency)), np.complex128)
+    for place in np.ndindex(rays.falloff.shape):
+        for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
+            each[place] += share * ray_otf(
+                frequency,
+                rays=rays.one(place),
+                opening=opening,
+                plate_thickness_mm=plate_thickness_mm,
+                distance_mm=distance_mm,
+                wavelength_nm=float(wavelength),
+                quick=quick,
+            )
+    return each
 
 
 _MOST_FREQUENCIES = 80  # to either side of zero in a point image

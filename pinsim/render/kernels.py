@@ -158,13 +158,13 @@ class _Sampler:
 
     def at(
         self,
-        u_mm: float,
-        v_mm: float,
+        u_mm: Array,
+        v_mm: Array,
         scale: float,
         light: Light | None = None,
         quarter: int | None = None,
     ) -> Values:
-        """Return (radii, directions) at a film point, for objects at m = scale.
+        """Return (points, radii, directions) at film points (points,), for objects at m = scale.
 
         quarter : instead of half a turn, directions from +u to +v, both included, this many steps.
         """
@@ -173,11 +173,10 @@ class _Sampler:
         frequency = self._grid(
             directions, np.pi / DIRECTIONS if quarter is None else 0.5 * np.pi / max(quarter, 1)
         )
-        rays = _clear_rays(camera, u_mm, v_mm)
         distance = math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0)
         values = light_ray_otf(
             frequency,
-            rays=rays,
+            rays=_clear_rays(camera, u_mm, v_mm),
             opening=camera.opening,
             plate_thickness_mm=camera.plate_thickness_mm,
             light=light or self._light,
@@ -185,19 +184,21 @@ class _Sampler:
             quick=True,
         )
         table: Values = values.real if camera.opening.mirrored else values
-        return table.reshape(self._radii.size, directions)
+        return table.reshape(u_mm.size, self._radii.size, directions)
 
 
-def _clear_rays(camera: Camera, u_mm: float, v_mm: float) -> ChiefRays:
-    """Return the ray to a film point, or to the nearest one towards the axis that is lit."""
+def _clear_rays(camera: Camera, u_mm: Array, v_mm: Array) -> ChiefRays:
+    """Return the rays to film points, or to the nearest ones towards the axis that are lit."""
+    nearer = np.ones(u_mm.shape)
     for _ in range(60):
-        rays = camera.surface.chief_rays(u_mm, v_mm)
-        if float(rays.falloff) > 0.0:
-            clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
-            if float(clear) >= LEAST_CLEAR:
-                return rays
-        u_mm, v_mm = 0.95 * u_mm, 0.95 * v_mm
-    return camera.surface.chief_rays(0.0, 0.0)
+        rays = camera.surface.chief_rays(nearer * u_mm, nearer * v_mm)
+        clear = camera.opening.clear_share(camera.plate_thickness_mm * rays.tangent)
+        dark = (rays.falloff <= 0.0) | (clear < LEAST_CLEAR)
+        if not dark.any():
+            return rays
+        nearer[dark] *= 0.95
+    nearer[dark] = 0.0
+    return camera.surface.chief_rays(nearer * u_mm, nearer * v_mm)
 
 
 def prepare(
@@ -287,40 +288,35 @@ def _sampled(
     samples = _samples(camera, nodes, sampler)
     # The point nearest to the axis tells what the few wavelengths leave out. On the axis all
     # directions of a round hole are alike.
-    near_u, near_v = (float(axis[np.argmin(np.abs(axis))]) for axis in nodes[:2])
+    near_u, near_v = (axis[[np.argmin(np.abs(axis))]] for axis in nodes[:2])
     scale, quarter = float(nodes[2][-1]), None
     if _round_on_flat(camera):
-        near_u, near_v, quarter = 0.0, 0.0, 0
+        near_u, near_v, quarter = np.zeros(1), np.zeros(1), 0
     missing = sampler.at(near_u, near_v, scale, light=light, quarter=quarter) - sampler.at(
         near_u, near_v, scale, quarter=quarter
     )
-    return samples.reshape(-1, radii.size * DIRECTIONS), missing
+    return samples.reshape(-1, radii.size * DIRECTIONS), missing[0]
 
 
 def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
     """Return transfer functions at all nodes, (u, v, m, radii, directions), mirror images shared."""
-    opening = camera.opening
     if _round_on_flat(camera):
         return _turned_samples(nodes, sampler)
-    seen: dict[tuple[float, float, float], Values] = {}
-
-    def at(u: float, v: float, m: float) -> Values:
-        if (u, v, m) not in seen:
-            seen[u, v, m] = sampler.at(u, v, m)
-        return seen[u, v, m]
-
-    turned = np.arange(DIRECTIONS)
-    result = []
-    for u in nodes[0]:
-        for v in nodes[1]:
-            for m in nodes[2]:
-                if not opening.mirrored:
-                    result.append(at(float(u), float(v), float(m)))
-                    continue
-                # Directions of this point's frequencies, as seen from the point whose kernel serves.
-                source = turned if u * v >= 0.0 else -turned
-                result.append(at(abs(float(u)), abs(float(v)), float(m))[:, source % DIRECTIONS])
-    return np.stack(result).reshape(*(axis.size for axis in nodes), *result[0].shape)
+    u, v = (part.ravel() for part in np.meshgrid(nodes[0], nodes[1], indexing="ij"))
+    mirrored = camera.opening.mirrored
+    places, which = np.arange(u.size), np.arange(u.size)
+    if mirrored:
+        _, places, which = np.unique(
+            np.abs(np.stack([u, v])), axis=1, return_index=True, return_inverse=True
+        )
+    seen_u, seen_v = (np.abs(x[places]) if mirrored else x[places] for x in (u, v))
+    at_nodes = np.stack([sampler.at(seen_u, seen_v, float(m)) for m in nodes[2]], axis=1)
+    values = at_nodes[which.ravel()]
+    if mirrored:
+        # Directions of this point's frequencies, as seen from the point whose kernel serves.
+        other = u * v < 0.0
+        values[other] = values[other][..., -np.arange(DIRECTIONS) % DIRECTIONS]
+    return values.reshape(*(axis.size for axis in nodes), *values.shape[2:])
 
 
 def _round_on_flat(camera: Camera) -> bool:
@@ -342,8 +338,9 @@ def _turned_samples(nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Val
     # Far off the axis twice the directions of the tables, as a turned table is read between them.
     steep = farthest > STEEP * sampler.focal_length_mm
     quarter = DIRECTIONS if steep else DIRECTIONS // 2
+    on_axis = np.zeros(places.size)
     sampled = np.stack(
-        [[sampler.at(float(p), 0.0, float(m), quarter=quarter) for m in nodes[2]] for p in places]
+        [sampler.at(places, on_axis, float(m), quarter=quarter) for m in nodes[2]], axis=1
     )
     # (places, m, radii, directions) to the series' coefficients; the next quarter mirrors this one.
     whole = np.concatenate([sampled, sampled[..., -2:0:-1]], axis=-1)
@@ -395,17 +392,23 @@ class _Stack:
 
         errors as in Kernels: rms of a picture and largest of a frequency, by the number of modes.
         """
-        rest = self._stacked.copy()
+        # What is left is judged, not used: single precision is far finer than the bounds.
+        rest = self._stacked.astype(np.float32)
+        single, scratch = fields.astype(np.float32), np.empty_like(rest)
+        by_band = rest.reshape(len(rest), self._bands, -1)
+        per_frequency = (1.0 / self._weight).astype(np.float32)
         errors = np.full((len(fields) + 1, 2), np.inf)
         done = 0
         # Looked at in growing steps: each look costs as much as taking many modes away.
         for count in (*(step for step in _COUNTS if step < len(errors)), len(errors) - 1):
-            some = fields[done:count]
-            rest -= some.T @ (some @ rest)
+            some = single[done:count]
+            if len(some):
+                rest -= np.matmul(some.T, some @ rest, out=scratch)
             done = count
-            power = (rest * rest).reshape(len(rest), self._bands, -1).sum(axis=2)
-            single = np.abs(rest.reshape(len(rest), -1, self._weight.size) / self._weight).max()
-            errors[count] = math.sqrt(float(power.max())), float(single)
+            power = np.einsum("pbf,pbf->pb", by_band, by_band)
+            np.abs(rest, out=scratch)
+            scratch.reshape(-1, self._weight.size)[:] *= per_frequency
+            errors[count] = math.sqrt(float(power.max())), float(scratch.max())
             if errors[count, 0] <= PICTURE_RMS and errors[count, 1] <= SINGLE_OTF:
                 break
         # What spare modes would leave is not looked at; they are for others.
