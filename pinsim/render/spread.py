@@ -19,7 +19,7 @@ from pinsim.progress import Progress, Reporter, ignore
 from pinsim.render.fourier import irfft2, rfft2
 from pinsim.render.illuminate import own_shade
 from pinsim.render.kept import Kept
-from pinsim.render.kernels import BandKernels, Kernels, PolarReader, Values, chebyshev_values
+from pinsim.render.kernels import Kernels, PolarReader, chebyshev_values
 from pinsim.render.plan import RenderPlan
 from pinsim.render.project import FilmView
 from pinsim.render.resample import ALIAS_FREE, response
@@ -55,7 +55,7 @@ def spread(view: FilmView, *, kept: Kept | None = None, report: Reporter = ignor
     count = len(kernels.fields)
     if plan.padded[0] * plan.padded[1] > LARGE_GRID_PX:
         count = kernels.modes_for(LARGE_PICTURE_RMS, LARGE_SINGLE_OTF)
-    grid = _Frequencies(plan, view.compensate)
+    grid = _Frequencies(plan, count, view.compensate)
     fields = _Fields(plan, view.inverse_distance)
     light = _Sum(len(plan.material.channels), grid.shape)
     cover = None if view.inverse_distance is None else _Sum(len(light.spectra), grid.shape)
@@ -146,7 +146,7 @@ def _add_mode(
             spectra[band.band] = rfft2(plane if field is None else plane * field)
             if kept is not None:
                 kept[mode, band.band] = spectra[band.band]
-        kernel = grid.mean(band) if mode < 0 else grid.mode(band, mode)
+        kernel = grid.mean(number) if mode < 0 else grid.mode(number, mode)
         light.add(turn, band.channel, spectra[band.band], kernel)
         if all(other.band != band.band for other in kernels.bands if other is not band):
             del spectra[band.band]
@@ -193,7 +193,7 @@ class _Fields:
 class _Frequencies:
     """The grid's frequencies, as rfft2 orders them, and kernels read there."""
 
-    def __init__(self, plan: RenderPlan, compensate: bool) -> None:
+    def __init__(self, plan: RenderPlan, modes: int, compensate: bool) -> None:
         rows, columns = plan.padded
         pitch = plan.pitch_mm
         across = np.asarray(np.fft.rfftfreq(columns, pitch), np.float64)
@@ -209,11 +209,18 @@ class _Frequencies:
             np.linspace(-end, end, 2 * _TABLE_CELLS + 1),
             np.linspace(0.0, end, _TABLE_CELLS + 1),
         )
+        self._bands = plan.kernels.bands
         self._reader = PolarReader(
             plan.kernels.radii,
             np.hypot(cells[0][:, None], cells[1][None, :]),
             np.arctan2(cells[0][:, None], cells[1][None, :]),
         )
+        # Polar tables are read through coarser square ones: each band's mean, then its modes.
+        polar = []
+        for band in self._bands:
+            average = band.mean.real.mean(axis=1)[:, None]
+            polar += [band.share * (band.mean - average), *(band.share * band.modes[:modes])]
+        self._tables = np.split(self._reader.at(np.stack(polar)), len(self._bands))
         # Each row of frequencies lies between two rows of cells; beyond them is a row of nothing.
         place = np.clip((down + end) * (_TABLE_CELLS / end), 0.0, 2 * _TABLE_CELLS - 1e-6)
         cell = np.where(np.abs(down) <= end, place.astype(np.intp), 2 * _TABLE_CELLS + 1)
@@ -229,19 +236,19 @@ class _Frequencies:
                 plane[rows] *= self._window[0][rows, None] * self._window[1]
         return spectra
 
-    def mean(self, band: BandKernels) -> _Rows:
-        """Return the mean kernel at every frequency.
+    def mean(self, number: int) -> _Rows:
+        """Return a band's mean kernel at every frequency.
 
         Its average over directions is read along the radius, which keeps the point it has at zero
         frequency, where the long tails are; the rest is read as modes are.
         """
-        average = band.mean.real.mean(axis=1)
-        radius, fine = self._reader.along(average)
+        band = self._bands[number]
+        radius, fine = self._reader.along(band.mean.real.mean(axis=1))
         steps = np.linspace(0.0, float(radius[-1]), _RADIUS_STEPS)
         # One more step, of nothing, for all that lies beyond the end.
         table = np.append(band.share * np.interp(steps, radius, fine), 0.0).astype(np.float32)
         per_step = np.float32((_RADIUS_STEPS - 1) / radius[-1])
-        rest = self._from_table(band.mean - average[:, None], band.share)
+        rest = self.mode(number, -1)
 
         def rows(some: slice) -> Kernel:
             at = np.hypot(self._down[some, None], self._across)
@@ -253,24 +260,22 @@ class _Frequencies:
 
         return rows
 
-    def mode(self, band: BandKernels, mode: int) -> _Rows:
-        """Return a mode at every frequency."""
-        return self._from_table(band.modes[mode], band.share)
+    def mode(self, number: int, mode: int) -> _Rows:
+        """Return a band's mode at every frequency, read from its square table linearly.
 
-    def _from_table(self, values: Values, share: float) -> _Rows:
-        """Read a polar table through a coarser square one, by linear interpolation."""
-        table = share * self._reader.at(values)
-        kind = np.complex64 if np.iscomplexobj(table) else np.float32
-        wide = np.zeros((table.shape[0] + 1, self._cells_across.shape[0]), kind)
-        np.matmul(table.astype(kind), self._cells_across.T, out=wide[:-1])
+        Mode -1 is the mean without its average over directions.
+        """
+        table = self._tables[number][mode + 1]
+        wide = np.zeros((table.shape[0] + 1, self._cells_across.shape[0]), table.dtype)
+        np.matmul(table, self._cells_across.T, out=wide[:-1])
         step = np.zeros_like(wide)
         np.subtract(wide[1:-1], wide[:-2], out=step[:-2])
 
         def rows(some: slice) -> Kernel:
             cell, share = self._cells_down[0][some], self._cells_down[1][some]
-            kernel: Kernel = np.take(step, cell, axis=0)
+            kernel: Kernel = np.take(step, cell, axis=0, mode="clip")
             kernel *= share
-            kernel += np.take(wide, cell, axis=0)
+            kernel += np.take(wide, cell, axis=0, mode="clip")
             return kernel
 
         return rows
