@@ -23,18 +23,18 @@ def gauss_legendre(count: int) -> tuple[Array, Array]:
     return 0.5 * (nodes + 1.0), 0.5 * weights
 
 
-def node_count(phase: float) -> int:
-    """Return how many Gauss-Legendre nodes settle an integrand whose phase runs over `phase` rad.
+def node_count(phase: Array) -> Array:
+    """Return how many Gauss-Legendre nodes settle integrands whose phase runs over `phase` rad.
 
     Convergence is geometric once there are more than phase/2 nodes; 26 more reach 1e-13. Rounded
     up to eights, so that few node tables are ever made.
     """
-    return 8 * math.ceil((0.55 * phase + 26.0) / 8.0)
+    return np.asarray(8.0 * np.ceil((0.55 * phase + 26.0) / 8.0))
 
 
-def quick_node_count(phase: float) -> int:
+def quick_node_count(phase: Array) -> Array:
     """Return how many nodes reach 1e-6: half as many more than phase/2 as for 1e-13."""
-    return 8 * math.ceil((0.55 * phase + 13.0) / 8.0)
+    return np.asarray(8.0 * np.ceil((0.55 * phase + 13.0) / 8.0))
 
 
 def overlap_otf(shift_mm: ArrayLike, phase_frequency: ArrayLike, *, diameter_mm: float) -> Array:
@@ -67,7 +67,7 @@ def overlap_otf(shift_mm: ArrayLike, phase_frequency: ArrayLike, *, diameter_mm:
     start = 0
     while start < order.size:
         stop = min(order.size, start + 4096)
-        count = node_count(float(reach[stop - 1]))
+        count = int(node_count(reach[stop - 1]))
         stop = min(stop, start + max(1, _BLOCK // count))
         result[order[start:stop]] = _overlap_block(
             flat_shift[order[start:stop]], flat_phase[order[start:stop]], radius, count
@@ -143,7 +143,7 @@ def round_psf(
     start = 0
     while start < order.size:
         stop = min(order.size, start + 1024)
-        count = node_count(math.pi * fresnel_number + float(v[order[stop - 1]]))
+        count = int(node_count(math.pi * fresnel_number + v[order[stop - 1]]))
         stop = min(stop, start + max(1, _BLOCK // count))
         nodes, weights = gauss_legendre(count)
         lens = np.exp(1j * math.pi * fresnel_number * nodes * nodes) * nodes * weights

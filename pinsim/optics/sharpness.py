@@ -4,6 +4,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -328,28 +329,56 @@ def light_ray_otf(
     frequency : (n, 2); rays of shape (...). quick : an error of 1e-6 is allowed. Returns (..., n); of
     a mirrored opening it is real, negative where light and dark change places.
     """
+    only = ray_otf_in_lights(
+        frequency,
+        rays=rays,
+        opening=opening,
+        plate_thickness_mm=plate_thickness_mm,
+        lights=(light,),
+        distance_mm=distance_mm,
+        quick=quick,
+    )
+    return np.asarray(only[0], np.complex128)
+
+
+def ray_otf_in_lights(
+    frequency: Array,
+    *,
+    rays: ChiefRays,
+    opening: Opening,
+    plate_thickness_mm: float,
+    lights: Sequence[Light],
+    distance_mm: float = math.inf,
+    quick: bool = False,
+) -> NDArray[np.inexact[Any]]:
+    """Return the same for several lights at once, (lights, ..., n); real for a mirrored opening."""
     if isinstance(opening, Ellipse):
         curves = opening.otf_in_colours(
-            light.wavelengths_nm * 1e-6,
+            np.concatenate([light.wavelengths_nm for light in lights]) * 1e-6,
             frequency @ np.swapaxes(rays.shift, -1, -2),
             rays.focus(distance_mm),
             plate_thickness_mm * rays.tangent,
             quick=quick,
         )
-        total = np.tensordot(light.shares, curves, axes=1)
-        return np.where(rays.falloff[..., None] > 0.0, total, 0.0).astype(np.complex128)
-    each = np.zeros((*rays.falloff.shape, len(frequency)), np.complex128)
-    for place in np.ndindex(rays.falloff.shape):
-        for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
-            each[place] += share * ray_otf(
-                frequency,
-                rays=rays.one(place),
-                opening=opening,
-                plate_thickness_mm=plate_thickness_mm,
-                distance_mm=distance_mm,
-                wavelength_nm=float(wavelength),
-                quick=quick,
-            )
+        ends = np.cumsum([light.shares.size for light in lights])[:-1]
+        parts = zip(lights, np.split(curves, ends), strict=True)
+        total = np.stack([np.tensordot(light.shares, part, axes=1) for light, part in parts])
+        return np.where(rays.falloff[..., None] > 0.0, total, 0.0)
+    kind = np.float64 if opening.mirrored else np.complex128
+    each = np.zeros((len(lights), *rays.falloff.shape, len(frequency)), kind)
+    for number, light in enumerate(lights):
+        for place in np.ndindex(rays.falloff.shape):
+            for wavelength, share in zip(light.wavelengths_nm, light.shares, strict=True):
+                values = ray_otf(
+                    frequency,
+                    rays=rays.one(place),
+                    opening=opening,
+                    plate_thickness_mm=plate_thickness_mm,
+                    distance_mm=distance_mm,
+                    wavelength_nm=float(wavelength),
+                    quick=quick,
+                )
+                each[number, *place] += share * (values.real if opening.mirrored else values)
     return each
 
 

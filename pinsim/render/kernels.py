@@ -12,6 +12,7 @@ the grid, and are prepared once for each design.
 """
 
 import math
+from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, replace
 from functools import lru_cache
@@ -22,8 +23,8 @@ from numpy.typing import NDArray
 
 from pinsim.camera import Camera
 from pinsim.material import Channel
-from pinsim.optics import ChiefRays, Light
-from pinsim.optics.sharpness import light_ray_otf
+from pinsim.optics import ChiefRays, Ellipse, Light
+from pinsim.optics.sharpness import ray_otf_in_lights
 from pinsim.threads import THREADS
 
 Array = NDArray[np.float64]
@@ -140,14 +141,13 @@ def _lighter(camera: Camera) -> Camera:
 
 
 class _Sampler:
-    """Evaluates transfer functions at film points on the polar grid of frequencies."""
+    """Evaluates transfer functions at film points on the polar grid of frequencies, for all bands."""
 
-    def __init__(self, camera: Camera, radii: Array, light: Light) -> None:
-        self.focal_length_mm = camera.focal_length_mm
+    def __init__(self, camera: Camera, radii: Array, lights: Sequence[Light]) -> None:
+        self.camera = camera
         self._frequency: dict[int, Array] = {}
         self._radii = radii
-        self._camera = camera
-        self._light = light
+        self._lights = lights
 
     def _grid(self, directions: int, over: float) -> Array:
         if directions not in self._frequency:
@@ -158,33 +158,31 @@ class _Sampler:
 
     def at(
         self,
-        u_mm: Array,
-        v_mm: Array,
+        rays: ChiefRays,
         scale: float,
-        light: Light | None = None,
+        lights: Sequence[Light] | None = None,
         quarter: int | None = None,
     ) -> Values:
-        """Return (points, radii, directions) at film points (points,), for objects at m = scale.
+        """Return (bands, points, radii, directions) for rays (points,) and objects at m = scale.
 
-        quarter : instead of half a turn, directions from +u to +v, both included, this many steps.
+        lights : in place of the bands' own. quarter : instead of half a turn, directions from +u to +v,
+        both included, this many steps.
         """
-        camera = self._camera
+        camera = self.camera
         directions = DIRECTIONS if quarter is None else quarter + 1
         frequency = self._grid(
             directions, np.pi / DIRECTIONS if quarter is None else 0.5 * np.pi / max(quarter, 1)
         )
-        distance = math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0)
-        values = light_ray_otf(
+        values: Values = ray_otf_in_lights(
             frequency,
-            rays=_clear_rays(camera, u_mm, v_mm),
+            rays=rays,
             opening=camera.opening,
             plate_thickness_mm=camera.plate_thickness_mm,
-            light=light or self._light,
-            distance_mm=distance,
+            lights=self._lights if lights is None else lights,
+            distance_mm=math.inf if scale <= 1.0 else camera.focal_length_mm / (scale - 1.0),
             quick=True,
         )
-        table: Values = values.real if camera.opening.mirrored else values
-        return table.reshape(u_mm.size, self._radii.size, directions)
+        return values.reshape(*values.shape[:-1], self._radii.size, directions)
 
 
 def _clear_rays(camera: Camera, u_mm: Array, v_mm: Array) -> ChiefRays:
@@ -236,21 +234,19 @@ def prepare(
     if rough:
         count //= 2
     radii = 0.5 * top_frequency * (1.0 - np.cos(np.pi * np.arange(count) / (count - 1)))
-    jobs = [
-        (number, band, float(weights.sum()), channel.wavelengths_nm, weights / weights.sum())
-        for number, channel in enumerate(channels)
-        for band, weights in enumerate(channel.weights.T)
-        if weights.sum() > 1e-6
-    ]
-    lights = [Light(wavelengths_nm=job[3], shares=job[4]) for job in jobs]
-    with ThreadPoolExecutor(THREADS) as pool:
-        few = ROUGH_WAVELENGTHS if rough else FEW_WAVELENGTHS
-        sampled = list(pool.map(lambda light: _sampled(camera, nodes, radii, light, few), lights))
+    bands = _band_lights(channels, ROUGH_WAVELENGTHS if rough else FEW_WAVELENGTHS)
+    if isinstance(camera.opening, Ellipse):
+        samples, missing = _sampled(camera, nodes, radii, bands)
+    else:
+        # Each band is long enough in the making for a thread of its own.
+        with ThreadPoolExecutor(THREADS) as pool:
+            each = list(pool.map(lambda band: _sampled(camera, nodes, radii, (band,)), bands))
+        samples, missing = (np.concatenate(part) for part in zip(*each, strict=True))
     frame_mm = max(u[1] - u[0], v[1] - v[0], 0.1 * z)
     grid = (radii.size, DIRECTIONS)
-    middles = [samples.mean(axis=0) for samples, _ in sampled]
-    apart = [samples - middle for (samples, _), middle in zip(sampled, middles, strict=True)]
-    stack = _Stack(apart, radii, frame_mm)
+    middles = samples.mean(axis=1)
+    samples -= middles[:, None]
+    stack = _Stack(samples, radii, frame_mm)
     if like is not None:
         at_nodes, errors = stack.along(like.at_nodes)
         if (errors[-1] > [PICTURE_RMS, SINGLE_OTF]).any():
@@ -258,21 +254,21 @@ def prepare(
     if like is None:
         at_nodes, errors = stack.along(stack.best_fields(), spare=SPARE_MODES if rough else 0)
     modes = stack.modes(at_nodes)
-    bands = tuple(
+    made = tuple(
         BandKernels(
-            channel=job[0],
-            band=job[1],
-            share=job[2],
-            mean=middle.reshape(grid) + missing,
+            channel=band.channel,
+            band=band.band,
+            share=band.share,
+            mean=middle.reshape(grid) + left_out,
             modes=own.reshape(-1, *grid),
         )
-        for job, middle, (_, missing), own in zip(jobs, middles, sampled, modes, strict=True)
+        for band, middle, left_out, own in zip(bands, middles, missing, modes, strict=True)
     )
     values = at_nodes.reshape(-1, *(axis.size for axis in nodes))
     return Kernels(
         range=film_range,
         radii=radii,
-        bands=bands,
+        bands=made,
         fields=_coefficients(values) if like is None else like.fields[: len(at_nodes)],
         errors=errors,
         at_nodes=at_nodes,
@@ -280,26 +276,57 @@ def prepare(
     )
 
 
+@dataclass(frozen=True, slots=True)
+class _BandLight:
+    """The light of one photo band for one film channel; few : its stand-in of few wavelengths."""
+
+    channel: int
+    band: int
+    share: float
+    light: Light
+    few: Light
+
+
+@lru_cache(maxsize=8)
+def _band_lights(channels: tuple[Channel, ...], few: int) -> tuple[_BandLight, ...]:
+    """Return the bands that make any difference."""
+    found = []
+    for number, channel in enumerate(channels):
+        for band, weights in enumerate(channel.weights.T):
+            share = float(weights.sum())
+            if share > 1e-6:
+                light = Light(wavelengths_nm=channel.wavelengths_nm, shares=weights / share)
+                found.append(_BandLight(number, band, share, light, light.condensed(few)))
+    return tuple(found)
+
+
 def _sampled(
-    camera: Camera, nodes: tuple[Array, Array, Array], radii: Array, light: Light, few: int
+    camera: Camera,
+    nodes: tuple[Array, Array, Array],
+    radii: Array,
+    bands: Sequence[_BandLight],
 ) -> tuple[Values, Values]:
-    """Return samples (points, frequencies) for few wavelengths, and what these leave out."""
-    sampler = _Sampler(camera, radii, light.condensed(few))
-    samples = _samples(camera, nodes, sampler)
+    """Return samples (bands, points, frequencies) for few wavelengths, and what these leave out."""
+    sampler = _Sampler(camera, radii, [band.few for band in bands])
+    samples = _samples(nodes, sampler)
     # The point nearest to the axis tells what the few wavelengths leave out. On the axis all
     # directions of a round hole are alike.
     near_u, near_v = (axis[[np.argmin(np.abs(axis))]] for axis in nodes[:2])
     scale, quarter = float(nodes[2][-1]), None
     if _round_on_flat(camera):
         near_u, near_v, quarter = np.zeros(1), np.zeros(1), 0
-    missing = sampler.at(near_u, near_v, scale, light=light, quarter=quarter) - sampler.at(
-        near_u, near_v, scale, quarter=quarter
-    )
-    return samples.reshape(-1, radii.size * DIRECTIONS), missing[0]
+    near = _clear_rays(camera, near_u, near_v)
+    whole = sampler.at(near, scale, lights=[band.light for band in bands], quarter=quarter)
+    missing = whole - sampler.at(near, scale, quarter=quarter)
+    return samples.reshape(len(bands), -1, radii.size * DIRECTIONS), missing[:, 0]
 
 
-def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
-    """Return transfer functions at all nodes, (u, v, m, radii, directions), mirror images shared."""
+def _samples(nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Values:
+    """Return transfer functions at all nodes, (bands, u, v, m, radii, directions).
+
+    Mirror images are shared.
+    """
+    camera = sampler.camera
     if _round_on_flat(camera):
         return _turned_samples(nodes, sampler)
     u, v = (part.ravel() for part in np.meshgrid(nodes[0], nodes[1], indexing="ij"))
@@ -310,13 +337,14 @@ def _samples(camera: Camera, nodes: tuple[Array, Array, Array], sampler: _Sample
             np.abs(np.stack([u, v])), axis=1, return_index=True, return_inverse=True
         )
     seen_u, seen_v = (np.abs(x[places]) if mirrored else x[places] for x in (u, v))
-    at_nodes = np.stack([sampler.at(seen_u, seen_v, float(m)) for m in nodes[2]], axis=1)
-    values = at_nodes[which.ravel()]
+    rays = _clear_rays(camera, seen_u, seen_v)
+    at_places = np.stack([sampler.at(rays, float(m)) for m in nodes[2]], axis=2)
+    values = at_places[:, which.ravel()]
     if mirrored:
         # Directions of this point's frequencies, as seen from the point whose kernel serves.
         other = u * v < 0.0
-        values[other] = values[other][..., -np.arange(DIRECTIONS) % DIRECTIONS]
-    return values.reshape(*(axis.size for axis in nodes), *values.shape[2:])
+        values[:, other] = values[:, other][..., -np.arange(DIRECTIONS) % DIRECTIONS]
+    return values.reshape(len(values), *(axis.size for axis in nodes), *values.shape[3:])
 
 
 def _round_on_flat(camera: Camera) -> bool:
@@ -336,24 +364,22 @@ def _turned_samples(nodes: tuple[Array, Array, Array], sampler: _Sampler) -> Val
     count = 1 if farthest == 0.0 else 1 + (4 * max(nodes[0].size, nodes[1].size)) // 5
     places = chebyshev_nodes(2 * count, -farthest, farthest)[:count]
     # Far off the axis twice the directions of the tables, as a turned table is read between them.
-    steep = farthest > STEEP * sampler.focal_length_mm
+    steep = farthest > STEEP * sampler.camera.focal_length_mm
     quarter = DIRECTIONS if steep else DIRECTIONS // 2
-    on_axis = np.zeros(places.size)
-    sampled = np.stack(
-        [sampler.at(places, on_axis, float(m), quarter=quarter) for m in nodes[2]], axis=1
-    )
-    # (places, m, radii, directions) to the series' coefficients; the next quarter mirrors this one.
+    rays = _clear_rays(sampler.camera, places, np.zeros(places.size))
+    sampled = np.stack([sampler.at(rays, float(m), quarter=quarter) for m in nodes[2]], axis=2)
+    # Directions, the last axis, to the series' coefficients; the next quarter mirrors this one.
     whole = np.concatenate([sampled, sampled[..., -2:0:-1]], axis=-1)
     harmonics = np.fft.rfft(whole, axis=-1).real / (2 * quarter)
     harmonics[..., 1:-1] *= 2.0
     to_points = (
         _even_reader(places / farthest, distance / farthest) if farthest else np.ones((1, 1))
     )
-    near = np.tensordot(to_points, harmonics, axes=(1, 0))
+    near = np.einsum("np,bpmrk->bnmrk", to_points, harmonics, optimize=True)
     angle = 2.0 * (np.pi * np.arange(DIRECTIONS) / DIRECTIONS - azimuth[:, None])
     turned = np.cos(np.arange(harmonics.shape[-1])[:, None] * angle[:, None, :])
-    values: Values = np.einsum("pmrk,pkd->pmrd", near, turned, optimize=True)
-    return values.reshape(*(axis.size for axis in nodes), *values.shape[2:])
+    values: Values = np.matmul(near, turned[:, None])
+    return values.reshape(len(values), *(axis.size for axis in nodes), *values.shape[3:])
 
 
 def _even_reader(nodes: Array, at: Array) -> Array:
@@ -368,18 +394,16 @@ class _Stack:
     Real and imaginary parts stand side by side too, so fields are real and common to all.
     """
 
-    def __init__(self, bands: list[Values], radii: Array, frame_mm: float) -> None:
+    def __init__(self, bands: Values, radii: Array, frame_mm: float) -> None:
         weight = np.repeat(_scene_power(radii, frame_mm), DIRECTIONS)
         weight = np.sqrt(weight * SCENE_VARIANCE / weight.sum())
         self._weight = np.maximum(weight, 1e-9 * weight.max())
-        self._imaginary = any(np.iscomplexobj(samples) for samples in bands)
-        parts = [
-            part
-            for samples in bands
-            for part in ((samples.real, samples.imag) if self._imaginary else (samples,))
-        ]
-        self._bands, self._parts = len(bands), len(parts)
-        self._stacked = np.concatenate([part * self._weight for part in parts], axis=1)
+        self._imaginary = np.iscomplexobj(bands)
+        parts = np.stack([bands.real, bands.imag], axis=1) if self._imaginary else bands[:, None]
+        self._bands, self._parts = len(bands), parts.shape[0] * parts.shape[1]
+        self._stacked = np.ascontiguousarray(
+            np.moveaxis(parts * self._weight, 2, 0).reshape(bands.shape[1], -1)
+        )
 
     def best_fields(self) -> Array:
         """Return orthonormal fields, (modes, points), the one that takes most away first."""

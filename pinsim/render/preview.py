@@ -160,7 +160,10 @@ def _on_pixels(planes: Float, view: FilmView, width_px: int | None) -> tuple[Flo
             for place, margin, size in zip(places, plan.margin, plan.shape, strict=True)
         ]
         covered = covered[np.ix_(*nearest)]
-    # A hard edge may ring a little below black; film cannot be exposed by less than nothing.
-    exposure = np.ascontiguousarray(np.maximum(np.moveaxis(exposure, 0, -1), 0.0))
-    exposure[~covered] = np.nan
-    return exposure, pitch_mm
+    picture = np.empty((*exposure.shape[1:], exposure.shape[0]), np.float32)
+    for channel, plane in enumerate(exposure):
+        # A hard edge may ring a little below black; film cannot be exposed by less than nothing.
+        np.maximum(plane, 0.0, out=picture[..., channel])
+    if not covered.all():
+        picture[~covered] = np.nan
+    return picture, pitch_mm

@@ -6,6 +6,7 @@ cropped, so their long tails stay. Where the scene has a distance map, what arri
 equally spread coverage, so that borders between unlike kernels neither lose nor invent light.
 """
 
+import math
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from functools import lru_cache
@@ -39,7 +40,9 @@ LEAST_RESPONSE = 0.02
 LARGE_GRID_PX = 600_000
 LARGE_PICTURE_RMS = 1e-3
 LARGE_SINGLE_OTF = 4e-2
-_RADIUS_STEPS = 1 << 15  # of a kernel's average along the radius: the nearest errs by 1e-4 at most
+# Of a kernel's average along the radius, as many as a short word tells apart: the nearest errs by
+# less than 1e-4.
+_RADIUS_STEPS = 1 << 16
 _ROWS = 48  # of a spectrum at once
 # Cells of the table a mode is read from, along each axis of frequency.
 _TABLE_CELLS = 96
@@ -226,14 +229,23 @@ class _Frequencies:
         cell = np.where(np.abs(down) <= end, place.astype(np.intp), 2 * _TABLE_CELLS + 1)
         self._cells_down = (cell, (place - np.floor(place)).astype(np.float32)[:, None])
         self._cells_across = _hats(across, cells[1])
-        self._down, self._across = down.astype(np.float32), across.astype(np.float32)
+        self._corner = math.sqrt(0.5) / pitch
+        self._steps = _radius_steps(rows, columns)
 
     def shape_spectra(self, spectra: Spectrum) -> Spectrum:
         """Give back what resampling dimmed, or average pixels: the same for all kernels, so once."""
-        for plane in spectra:
-            for start in range(0, plane.shape[0], _ROWS):
-                rows = slice(start, min(start + _ROWS, plane.shape[0]))
-                plane[rows] *= self._window[0][rows, None] * self._window[1]
+        # A complex number is two floats side by side: numpy multiplies these faster.
+        across = np.repeat(self._window[1], 2)
+
+        def shape(start: int) -> None:
+            rows = slice(start, start + _ROWS)
+            window = self._window[0][rows, None] * across
+            for plane in spectra:
+                plane[rows].view(np.float32)[:] *= window
+
+        with ThreadPoolExecutor(THREADS) as pool:
+            for _ in pool.map(shape, range(0, spectra.shape[1], _ROWS)):
+                pass
         return spectra
 
     def mean(self, number: int) -> _Rows:
@@ -244,18 +256,14 @@ class _Frequencies:
         """
         band = self._bands[number]
         radius, fine = self._reader.along(band.mean.real.mean(axis=1))
-        steps = np.linspace(0.0, float(radius[-1]), _RADIUS_STEPS)
-        # One more step, of nothing, for all that lies beyond the end.
-        table = np.append(band.share * np.interp(steps, radius, fine), 0.0).astype(np.float32)
-        per_step = np.float32((_RADIUS_STEPS - 1) / radius[-1])
+        steps = np.linspace(0.0, self._corner, _RADIUS_STEPS)
+        # Nothing beyond the end.
+        table = (band.share * np.interp(steps, radius, fine, right=0.0)).astype(np.float32)
         rest = self.mode(number, -1)
 
         def rows(some: slice) -> Kernel:
-            at = np.hypot(self._down[some, None], self._across)
-            at *= per_step
-            at += np.float32(0.5)
             kernel = rest(some)
-            kernel += np.take(table, at.astype(np.int32), mode="clip")
+            kernel += np.take(table, self._steps[some], mode="clip")
             return kernel
 
         return rows
@@ -279,6 +287,21 @@ class _Frequencies:
             return kernel
 
         return rows
+
+
+@lru_cache(maxsize=2)
+def _radius_steps(rows: int, columns: int) -> NDArray[np.uint16]:
+    """Return each frequency's |nu| in steps of which _RADIUS_STEPS reach the grid's corner."""
+    down = np.fft.fftfreq(rows).astype(np.float32)[:, None]
+    across = np.fft.rfftfreq(columns).astype(np.float32)
+    steps = np.empty((rows, across.size), np.uint16)
+    for start in range(0, rows, _ROWS):
+        some = slice(start, start + _ROWS)
+        radius = np.hypot(down[some], across)
+        radius *= np.float32((_RADIUS_STEPS - 1) / math.sqrt(0.5))
+        radius += np.float32(0.5)
+        steps[some] = np.minimum(radius, _RADIUS_STEPS - 1)
+    return steps
 
 
 def _hats(axis: Array, cells: Array) -> Float:
