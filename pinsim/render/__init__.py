@@ -12,6 +12,9 @@ develop.py     exposure -> tones, positive or negative, upright or as seen on th
 picture.py     the Picture: what came out, with its scale, and how it is saved
 preview.py     the whole road, in one call
 
+kernels.py     how the hole draws all over the film: a mean and some modes (for plan)
+frequencies.py kernels at every frequency of the grid (for spread)
+fourier.py     transforms of whole pictures (for spread)
 kept.py        what a second look at the same scene need not make again
 resample.py    band-limited resampling along one axis, as block-banded matrices (for project)
 """
