@@ -1,6 +1,7 @@
 """The whole road in one call: a Scene through a Camera to a Picture."""
 
 import math
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import replace
 from typing import Literal
 
@@ -22,6 +23,7 @@ from pinsim.render.project import FilmView, project
 from pinsim.render.resample import interpolate
 from pinsim.render.spread import spread
 from pinsim.scene import Scene
+from pinsim.threads import THREADS
 
 Float = NDArray[np.float32]
 
@@ -161,9 +163,14 @@ def _on_pixels(planes: Float, view: FilmView, width_px: int | None) -> tuple[Flo
         ]
         covered = covered[np.ix_(*nearest)]
     picture = np.empty((*exposure.shape[1:], exposure.shape[0]), np.float32)
-    for channel, plane in enumerate(exposure):
+
+    def lay(channel: int) -> None:
         # A hard edge may ring a little below black; film cannot be exposed by less than nothing.
-        np.maximum(plane, 0.0, out=picture[..., channel])
+        np.maximum(exposure[channel], 0.0, out=picture[..., channel])
+
+    with ThreadPoolExecutor(THREADS) as pool:
+        for _ in pool.map(lay, range(len(exposure))):
+            pass
     if not covered.all():
         picture[~covered] = np.nan
     return picture, pitch_mm
