@@ -2,6 +2,7 @@
 
 import os
 import tempfile
+import zlib
 from collections.abc import Callable, Iterable, Sequence
 from functools import lru_cache
 from pathlib import Path
@@ -167,7 +168,9 @@ def encode_picture(
             dpi=(dpi, dpi),
             icc_profile=profile,
             pnginfo=text,
-            compress_level=4,
+            # After PNG's own filters a picture is mostly short runs: as small as the slowest level.
+            compress_level=1,
+            compress_type=zlib.Z_RLE,
         )
     return lambda file: image.save(
         file,

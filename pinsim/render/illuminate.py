@@ -37,16 +37,31 @@ def falloff(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32
 
 def _around_axis(camera: Camera, radius_mm: NDArray[np.float32]) -> NDArray[np.float32]:
     """Return the falloff of a round hole before flat film, which depends on the radius only."""
-    table = _table(camera, float(2.0 ** math.ceil(math.log2(1.0 + float(radius_mm.max())))))
-    radius_mm *= np.float32((_TABLE - 1) / table[0])
-    return np.take(table[1], radius_mm.astype(np.int32))
+    end_mm = _end_mm(radius_mm)
+    return _read_along(_table(camera, end_mm), end_mm, radius_mm)
 
 
 @lru_cache(maxsize=4)
-def _table(camera: Camera, end_mm: float) -> tuple[float, NDArray[np.float32]]:
-    """Return the end and, at the middles of even steps to it, the falloff along a radius."""
-    radius = (np.arange(_TABLE) + 0.5) * (end_mm / (_TABLE - 1))
-    return end_mm, _anywhere(camera, np.asarray(radius, np.float64), np.zeros(1))
+def _table(camera: Camera, end_mm: float) -> NDArray[np.float32]:
+    return _anywhere(camera, _radii_mm(end_mm), np.zeros(1))
+
+
+def _end_mm(radius_mm: NDArray[np.float32]) -> float:
+    """Return where a table that holds these radii ends."""
+    return float(2.0 ** math.ceil(math.log2(1.0 + float(radius_mm.max()))))
+
+
+def _radii_mm(end_mm: float) -> Array:
+    """Return the middles of a table's even steps."""
+    return np.asarray((np.arange(_TABLE) + 0.5) * (end_mm / (_TABLE - 1)), np.float64)
+
+
+def _read_along(
+    table: NDArray[np.float32], end_mm: float, radius_mm: NDArray[np.float32]
+) -> NDArray[np.float32]:
+    """Read a table at radii, which are used up."""
+    radius_mm *= np.float32((_TABLE - 1) / end_mm)
+    return np.take(table, radius_mm.astype(np.int32), mode="clip")
 
 
 def _anywhere(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32]:
@@ -64,11 +79,21 @@ def own_shade(plan: RenderPlan) -> NDArray[np.float32] | None:
     float32 (rows, columns) on the padded grid; None where that is 1 everywhere. So smooth and so near
     to 1 that it is the same before spreading and after.
     """
-    if plan.family is None or plan.camera.plate_thickness_mm == 0.0:
+    family = plan.family
+    if family is None or plan.camera.plate_thickness_mm == 0.0:
         return None
-    both = (falloff(camera, plan.right_mm(), plan.up_mm()) for camera in (plan.camera, plan.family))
-    own, common = both
-    return np.divide(own, common, out=own, where=common > 0.0)
+
+    def ratio(right_mm: Array, up_mm: Array) -> NDArray[np.float32]:
+        own, common = (_anywhere(camera, right_mm, up_mm) for camera in (plan.camera, family))
+        return np.divide(own, common, out=own, where=common > 0.0)
+
+    right_mm, up_mm = plan.right_mm(), plan.up_mm()
+    if not plan.camera.surface.flat:
+        return ratio(right_mm[None, :], up_mm[:, None])
+    # A family's holes are round.
+    radius_mm = np.hypot(right_mm[None, :].astype(np.float32), up_mm[:, None].astype(np.float32))
+    end_mm = _end_mm(radius_mm)
+    return _read_along(ratio(_radii_mm(end_mm), np.zeros(1)), end_mm, radius_mm)
 
 
 def illuminate(view: FilmView) -> FilmView:

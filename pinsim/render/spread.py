@@ -29,7 +29,7 @@ Spectrum = NDArray[np.complex64]
 
 # A large grid is drawn with fewer modes: an rms error of 1e-3 of white at the frame's worst point,
 # less than an 8-bit file rounds by. Small grids, where modes cost nothing, are drawn with all.
-LARGE_GRID_PX = 600_000
+LARGE_GRID_PX = 150_000
 LARGE_PICTURE_RMS = 1e-3
 LARGE_SINGLE_OTF = 4e-2
 COVERAGE = -1  # in place of a photo band: what is spread is 1 everywhere
