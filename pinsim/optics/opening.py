@@ -159,7 +159,7 @@ def disc_overlap(shift: Array, wave: Array, plate_shift: Array, *, quick: bool =
     # Those that need as many nodes go together: a long list costs what its slow part costs.
     nodes = quick_node_count(phase) if quick else node_count(phase)
     # The discs' corners: no longer smooth, 1e-4 is reached so.
-    nodes = np.where(thick, np.maximum(40, node_count(phase) + 8), nodes)
+    nodes = np.where(thick, np.maximum(32 if quick else 40, nodes + 8), nodes)
     eights = (nodes / 8.0).astype(np.uint16)  # numpy sorts short words fastest
     for lens in (False, True):
         chosen = np.flatnonzero(meets & (thick == lens))

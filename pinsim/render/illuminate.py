@@ -19,6 +19,7 @@ from pinsim.threads import THREADS
 
 Array = NDArray[np.float64]
 
+_SHADE_STEPS = 1 << 13  # the same of a ratio so near to 1
 _TABLE = 1 << 16  # steps along a radius: reading the nearest errs by less than 1e-4
 _STRIP = 64  # film rows at once: they stay in the processor's cache
 
@@ -38,7 +39,7 @@ def falloff(camera: Camera, right_mm: Array, up_mm: Array) -> NDArray[np.float32
 def _around_axis(camera: Camera, radius_mm: NDArray[np.float32]) -> NDArray[np.float32]:
     """Return the falloff of a round hole before flat film, which depends on the radius only."""
     end_mm = _end_mm(radius_mm)
-    return _read_along(_table(camera, end_mm), end_mm, radius_mm)
+    return _read_along(_table(camera, end_mm).ravel(), end_mm, radius_mm)
 
 
 @lru_cache(maxsize=4)
@@ -51,16 +52,16 @@ def _end_mm(radius_mm: NDArray[np.float32]) -> float:
     return float(2.0 ** math.ceil(math.log2(1.0 + float(radius_mm.max()))))
 
 
-def _radii_mm(end_mm: float) -> Array:
+def _radii_mm(end_mm: float, steps: int = _TABLE) -> Array:
     """Return the middles of a table's even steps."""
-    return np.asarray((np.arange(_TABLE) + 0.5) * (end_mm / (_TABLE - 1)), np.float64)
+    return np.asarray((np.arange(steps) + 0.5) * (end_mm / (steps - 1)), np.float64)
 
 
 def _read_along(
     table: NDArray[np.float32], end_mm: float, radius_mm: NDArray[np.float32]
 ) -> NDArray[np.float32]:
     """Read a table at radii, which are used up."""
-    radius_mm *= np.float32((_TABLE - 1) / end_mm)
+    radius_mm *= np.float32((table.size - 1) / end_mm)
     return np.take(table, radius_mm.astype(np.int32), mode="clip")
 
 
@@ -93,7 +94,8 @@ def own_shade(plan: RenderPlan) -> NDArray[np.float32] | None:
     # A family's holes are round.
     radius_mm = np.hypot(right_mm[None, :].astype(np.float32), up_mm[:, None].astype(np.float32))
     end_mm = _end_mm(radius_mm)
-    return _read_along(ratio(_radii_mm(end_mm), np.zeros(1)), end_mm, radius_mm)
+    shade = ratio(_radii_mm(end_mm, _SHADE_STEPS), np.zeros(1))
+    return _read_along(shade.ravel(), end_mm, radius_mm)
 
 
 def illuminate(view: FilmView) -> FilmView:
