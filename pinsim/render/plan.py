@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 from pinsim.camera import Camera
 from pinsim.camera.hole import HOLE_RANGE_MM
 from pinsim.errors import DesignError, out_of_range
-from pinsim.material import LONGEST_NM, SHORTEST_NM, Material
-from pinsim.optics import Ellipse, finest_detail
+from pinsim.material import LONGEST_NM, SHORTEST_NM, Channel, Material
+from pinsim.optics import Ellipse, Light, finest_detail
 from pinsim.optics.sharpness import light_ray_otf
 from pinsim.render.kernels import FilmRange, Kernels, prepared
 from pinsim.scene import DistanceMap, Scene
@@ -116,11 +116,14 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tup
     opening = camera.opening
     angle = np.pi * np.arange(4) / 4.0
     directions = np.stack([np.cos(angle), np.sin(angle)], axis=-1)
+    points = _film_points(camera)
     if isinstance(opening, Ellipse) and camera.surface.flat:
         directions = directions[::2]
+        if camera.hole.shape == "round" and points == [(0.0, 0.0)]:
+            directions = directions[:1]  # on the axis all are alike
     shortest_mm = 1e-6 * min(float(c.wavelengths_nm.min()) for c in material.channels)
     seen, end = 0.0, 0.0
-    for point in _film_points(camera):
+    for point in points:
         rays = camera.surface.chief_rays(*point)
         if float(rays.falloff) <= 0.0:
             continue
@@ -136,13 +139,13 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tup
         radius = np.linspace(0.0, top, 400)
         frequency = (radius[:, None, None] * directions).reshape(-1, 2)
         strongest = np.zeros(radius.size)
-        for channel in material.channels:
+        for light in _few_lights(material.channels):
             values = light_ray_otf(
                 frequency,
                 rays=rays,
                 opening=opening,
                 plate_thickness_mm=0.0,
-                light=channel.light.condensed(_FEW_WAVELENGTHS),
+                light=light,
                 distance_mm=distance_mm,
                 quick=True,
             )
@@ -153,6 +156,11 @@ def _detail_limit(camera: Camera, material: Material, distance_mm: float) -> tup
             here = last
         seen, end = max(seen, here), max(end, top)
     return seen, end
+
+
+@lru_cache(maxsize=8)
+def _few_lights(channels: tuple[Channel, ...]) -> list[Light]:
+    return [channel.light.condensed(_FEW_WAVELENGTHS) for channel in channels]
 
 
 def _good_length(least: int) -> int:

@@ -32,6 +32,7 @@ Spectrum = NDArray[np.complex64]
 LARGE_GRID_PX = 150_000
 LARGE_PICTURE_RMS = 1e-3
 LARGE_SINGLE_OTF = 4e-2
+_STRIP = 32  # rows of a field at once
 COVERAGE = -1  # in place of a photo band: what is spread is 1 everywhere
 
 
@@ -114,12 +115,19 @@ class _Transforms:
             return
         field = None if mode < 0 else self._field(mode)
         for band in missing:
-            if band == COVERAGE:
-                weighted = np.ones(self._planes.shape[1:], np.float32) if field is None else field
-            else:
+            if band != COVERAGE:
                 plane = self._planes[band]
-                weighted = plane if field is None else plane * field
-            self.made[mode, band] = rfft2(weighted)
+                self.made[mode, band] = rfft2(plane if field is None else plane * field)
+            elif field is not None:
+                self.made[mode, band] = rfft2(field)
+            else:
+                self.made[mode, band] = _transform_of_one(self._planes.shape[1:])
+
+
+def _transform_of_one(shape: tuple[int, ...]) -> Spectrum:
+    spectrum = np.zeros((shape[0], shape[1] // 2 + 1), np.complex64)
+    spectrum[0, 0] = shape[0] * shape[1]
+    return spectrum
 
 
 class _Fields:
@@ -132,23 +140,45 @@ class _Fields:
         self._down = chebyshev_values(count_v, *span.v_mm, plan.up_mm())
         # Chebyshev polynomials of each point's m; the first is 1 everywhere.
         self._by_distance: list[Float] = []
-        if inverse_distance is not None and count_m > 1:
-            low, high = span.scale
-            scale = 1.0 + np.float32(plan.camera.focal_length_mm) * inverse_distance
-            unit = np.clip(
-                (2.0 * scale - np.float32(low + high)) / np.float32(high - low), -1.0, 1.0
-            )
-            before, now = np.ones_like(unit), unit
-            for _ in range(count_m - 1):
-                self._by_distance.append(now)
-                before, now = now, 2.0 * unit * now - before
+        if inverse_distance is None or count_m == 1:
+            return
+        self._by_distance = [
+            np.empty(inverse_distance.shape, np.float32) for _ in range(count_m - 1)
+        ]
+        low, high = span.scale
+        slope = np.float32(2.0 * plan.camera.focal_length_mm / (high - low))
+        offset = np.float32((2.0 - low - high) / (high - low))
+
+        def fill(start: int) -> None:
+            rows = slice(start, start + _STRIP)
+            unit = inverse_distance[rows] * slope
+            unit += offset
+            np.clip(unit, -1.0, 1.0, out=unit)
+            before: Float | np.float32 = np.float32(1.0)
+            now = unit
+            for polynomial in self._by_distance:
+                polynomial[rows] = now
+                before, now = now, np.float32(2.0) * unit * now - before
+
+        with ThreadPoolExecutor(THREADS) as pool:
+            for _ in pool.map(fill, range(0, inverse_distance.shape[0], _STRIP)):
+                pass
 
     def field(self, coefficients: Array) -> Float:
         """Return a field, float32 (rows, columns), from its coefficients (u, v, m)."""
         single = coefficients.astype(np.float32)
-        total: Float = self._down @ (single[:, :, 0].T @ self._across)
-        for k, polynomial in enumerate(self._by_distance, start=1):
-            part = self._down @ (single[:, :, k].T @ self._across)
-            part *= polynomial
-            total += part
+        rows, columns = self._down.shape[0], self._across.shape[1]
+        total = np.empty((rows, columns), np.float32)
+        if not self._by_distance:
+            return np.matmul(self._down, single[:, :, 0].T @ self._across, out=total)
+        across = [single[:, :, k].T @ self._across for k in range(single.shape[2])]
+        part = np.empty((_STRIP, columns), np.float32)
+        for start in range(0, rows, _STRIP):  # what is added up stays in the processor's cache
+            some = slice(start, min(start + _STRIP, rows))
+            strip, scratch = total[some], part[: min(_STRIP, rows - start)]
+            np.matmul(self._down[some], across[0], out=strip)
+            for k, polynomial in enumerate(self._by_distance, start=1):
+                np.matmul(self._down[some], across[k], out=scratch)
+                scratch *= polynomial[some]
+                strip += scratch
         return total
