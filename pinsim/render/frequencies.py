@@ -31,8 +31,9 @@ LEAST_RESPONSE = 0.02
 # less than 1e-4.
 _RADIUS_STEPS = 1 << 16
 _ROWS = 48  # of a spectrum at once
-# Cells of the square tables, along each axis of frequency.
+# Cells of the square tables from zero to the kernels' end; a grid that ends before needs fewer.
 _CELLS = 96
+_LEAST_CELLS = 24
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -65,22 +66,21 @@ class Frequencies:
             for axis in (down, across)
         ]
         self._bands = plan.kernels.bands
-        self._read_tables(plan, modes, end)
-        cells = np.linspace(0.0, end, _CELLS + 1)
-        self._hats = np.maximum(1.0 - np.abs(across - cells[:, None]) * (_CELLS / end), 0.0).astype(
-            np.float32
-        )
+        count = max(_LEAST_CELLS, math.ceil(_CELLS * end / float(plan.kernels.radii[-1])))
+        cells = np.linspace(0.0, end, count + 1)
+        self._read_tables(plan, modes, cells)
+        apart = np.abs(across - cells[:, None]) * (count / end)
+        self._hats = np.maximum(1.0 - apart, 0.0).astype(np.float32)
         self._steps = _radius_steps(rows, columns)
-        self.strips = list(_strips(down, end))
+        self.strips = _strips(down, end, count)
 
-    def _read_tables(self, plan: RenderPlan, modes: int, end: float) -> None:
+    def _read_tables(self, plan: RenderPlan, modes: int, across: Array) -> None:
         """Read each band's mean and modes from their polar tables to square ones.
 
         The mean's average over directions is kept along the radius, which keeps the point it has at
         zero frequency, where the long tails are.
         """
-        down = np.linspace(-end, end, 2 * _CELLS + 1)[:, None]
-        across = np.linspace(0.0, end, _CELLS + 1)
+        down = np.concatenate([-across[:0:-1], across])[:, None]
         reader = PolarReader(plan.kernels.radii, np.hypot(down, across), np.arctan2(down, across))
         steps = np.linspace(0.0, math.sqrt(0.5) / plan.pitch_mm, _RADIUS_STEPS)
         self._radial, polar = [], []
@@ -147,9 +147,9 @@ class Frequencies:
             sums *= window
 
 
-def _strips(down: Array, end: float) -> list[Strip]:
+def _strips(down: Array, end: float, cells: int) -> list[Strip]:
     """Return the strips of rows up to the end; their frequencies go one way within each."""
-    place = np.clip((down + end) * (_CELLS / end), 0.0, 2 * _CELLS - 1e-6)
+    place = np.clip((down + end) * (cells / end), 0.0, 2 * cells - 1e-6)
     cell = place.astype(np.intp)
     share = (place - cell).astype(np.float32)
     inside = np.abs(down) <= end * (1.0 + 1e-12)

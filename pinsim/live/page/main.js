@@ -76,6 +76,7 @@ async function begin() {
       by("caption").textContent = captionText(about);
       by("paper").setAttribute("aria-label", `The picture: ${about.description || captionText(about)}`);
       figures.picture(about);
+      tell();
       if (!fine) return;
       if (same(state, bench.state)) rest(0); // the figures that take longer wait until the picture is there
       tellLater();
@@ -84,6 +85,7 @@ async function begin() {
       if (!which && !same(state, bench.state)) return;
       showError((which ? `${which}: ` : "") + error.message);
       if (error.errors || error.field) controls.refuse(error.errors ?? { [error.field]: error.message });
+      tell();
       if (!which) rest(0);
       if (error.needs === "view" && !which) photos.askView(context.scene);
     },
@@ -130,6 +132,12 @@ async function begin() {
     controls.show(bench.state, context);
   });
 
+  let toldOf = null;
+  const tell = () => {
+    if (toldOf === bench.state) return;
+    toldOf = bench.state;
+    quick.want(bench.state);
+  };
   let restTimer, addressTimer, tellTimer, byHand = false;
   const rest = (wait) => {
     clearTimeout(restTimer);
@@ -151,13 +159,14 @@ async function begin() {
     byHand = true;
     showError("");
     if (keys.includes("scene")) context.scene = sceneOf(bench.state.scene);
-    if (keys.some((key) => key !== "pinned")) {
-      quick.want(bench.state);
-      figures.waiting(true);
-    }
+    if (keys.some((key) => key !== "pinned")) figures.waiting(true);
     clearTimeout(restTimer);
+    // The first figures follow the picture: computed beside it they would make it late.
     if (keys.some((key) => !UNSEEN.has(key))) print.draw(bench.state);
-    else if (print.keep(bench.state)) rest(100);
+    else {
+      tell();
+      if (print.keep(bench.state)) rest(100);
+    }
     print.drawPinned(bench.pinned, bench.state);
     if (keys.some((key) => SCENE_KEYS.includes(key))) scene.want(bench.state);
     if (who !== drawing) drawing.draw();
@@ -218,7 +227,7 @@ async function begin() {
   print.drawPinned(bench.pinned, bench.state);
   controls.show(bench.state, context);
   pinButtons();
-  quick.want(bench.state);
+  // The figures come with the picture.
   scene.want(bench.state);
   history.replaceState(null, "", toAddress(bench.state, bench.pinned, start.defaults));
   window.pinsimState = () => bench.state; // for whoever looks from the browser's console, and for the checks
