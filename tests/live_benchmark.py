@@ -14,6 +14,7 @@ import tempfile
 import time
 from pathlib import Path
 
+from benchmark import as_installed
 from live_browser import browser, live, settled
 
 # One step of the slider, timed in the page: from the event to the end of the frame with its pixels.
@@ -43,6 +44,7 @@ async (value) => {
 
 def main(rounds: int = 40) -> None:
     """Print the table."""
+    as_installed()
     print(f"load {' '.join(f'{one:.1f}' for one in os.getloadavg())}, {os.cpu_count()} cores, ms")
     for name, state in (
         ("one distance", "#hole_mm=0.3&frame=6x6&depth_mm=60&distance_mm=infinity"),
