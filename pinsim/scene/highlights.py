@@ -48,7 +48,7 @@ _SPECK = 1.0 / 1000.0
 _COLOURED = 0.5
 # The lift is worked out on at most so many cells: 1.5 times as fine as the film grid of most designs.
 _CELLS = 2_000_000
-_SAMPLE = 4_000_000  # pixels looked at to tell a share
+_SAMPLE = 1_000_000  # pixels looked at to tell a share
 _BAND = 1 << 22  # values of light held at once
 
 
