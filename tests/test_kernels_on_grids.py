@@ -1,7 +1,7 @@
-"""The few kernels that a picture is drawn with, read on its grid, against the transfer function itself.
+"""The few kernels a picture is drawn with, read on its grid, against the transfer function itself.
 
-`light_ray_otf` is checked elsewhere against summed Rayleigh-Sommerfeld waves (Born & Wolf, Principles of
-Optics, 8.11.2; tests/test_optics_anywhere.py) and against prysm; here each colour's mean and modes,
+`light_ray_otf` is checked elsewhere against summed Rayleigh-Sommerfeld waves (Born & Wolf, Principles
+of Optics, 8.11.2; tests/test_optics_anywhere.py) and against prysm; here each colour's mean and modes,
 sampled, decomposed and read through two tables, have to give it back at any film point.
 """
 
@@ -46,7 +46,7 @@ CAMERAS = {
 
 
 def _at_point(plan, u_mm, v_mm):
-    """Return each channel's kernel at one film point, (channels, rows, columns), and its frequencies."""
+    """Return each channel's kernel at a film point, (channels, rows, columns), and its frequencies."""
     kernels = plan.kernels
     span, fields = kernels.range, kernels.fields
     across = chebyshev_values(fields.shape[1], *span.u_mm, np.array([u_mm]))[0]
@@ -88,7 +88,8 @@ def test_mean_and_modes_give_the_transfer_function_back(name, place, width_px):
             light=light,
         )
         apart = np.abs(kernels[number].ravel()[picked] - exact)
-        assert float(apart.max()) < 1.2 * SINGLE_OTF
+        # The bound holds where kernels are sampled; between those points and directions a little more.
+        assert float(apart.max()) < 1.5 * SINGLE_OTF
         # Ordinary scenes' contrast falls as 1/nu; this rms is over all frequencies alike.
         assert float(np.sqrt(np.mean(apart**2))) < 20.0 * PICTURE_RMS
 
