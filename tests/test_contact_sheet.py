@@ -13,6 +13,7 @@ from PIL import Image
 
 import pinsim
 from pinsim import Camera, DesignError, Film, Hole, Scene
+from pinsim.batch.draw import codes_of
 from pinsim.batch.frames import checksum_of, scene_checksum
 from pinsim.batch.needs import nearest_to, read_need
 
@@ -182,7 +183,7 @@ def test_a_sheet_of_two_by_two_has_its_true_size_on_paper(tmp_path):
     for (entry, _, x, y), box in zip(placed(sheet), boxes, strict=True):
         assert x / dpi * 25.4 == pytest.approx(box[0], abs=0.5 * 25.4 / dpi + 0.02)
         assert y / dpi * 25.4 == pytest.approx(box[1], abs=0.5 * 25.4 / dpi + 0.02)
-        picture = sheet._store.codes(entry.key)
+        picture = codes_of(sheet._store.png(entry.key))
         np.testing.assert_array_equal(codes[y : y + 72, x : x + 96], picture)
 
 

@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import Any, BinaryIO
 
 from pinsim import files
-from pinsim.batch.draw import Codes, Drawn, codes_of
+from pinsim.batch.draw import Drawn
 from pinsim.errors import OutputError
 
 _NAME = 40  # hexadecimal digits in a file's name: enough for no two to meet
@@ -66,21 +66,17 @@ class Store:
         text = json.dumps({"checksum": key, "files": sums, "about": _plain(drawn.about)}, indent=1)
         _write(self.folder / f"{key[:_NAME]}.json", text.encode())
 
-    def codes(self, key: str) -> Codes:
-        """Return a picture's codes."""
-        return codes_of(self._data(key, "png") or b"")
-
-    def detail(self, key: str) -> Codes | None:
-        """Return the codes of its enlarged middle, if it has one."""
-        data = self._data(key, "detail.png")
-        return None if data is None else codes_of(data)
-
-    def _data(self, key: str, ending: str) -> bytes | None:
+    def png(self, key: str, *, detail: bool = False) -> bytes:
+        """Return a picture, or its enlarged middle, as a PNG file; KeyError if there is none."""
         if self.folder is None:
             drawn = self._memory[key]
-            return drawn.png if ending == "png" else drawn.detail_png
-        file = self.folder / f"{key[:_NAME]}.{ending}"
-        return file.read_bytes() if file.exists() else None
+            data = drawn.detail_png if detail else drawn.png
+        else:
+            file = self.folder / f"{key[:_NAME]}.{'detail.png' if detail else 'png'}"
+            data = file.read_bytes() if file.exists() else None
+        if data is None:
+            raise KeyError(key)
+        return data
 
     def remove(self) -> None:
         """Delete the folder with what this class writes; anything else in it stays, and so does it."""

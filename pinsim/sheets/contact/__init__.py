@@ -4,6 +4,7 @@ make.py      from scenes and designs to frames, to what is missing of them, to a
 captions.py  what is said of each: only what differs
 layout.py    where everything lies, in millimetres
 paper.py     one layout drawn as a picture or as a PDF
+packed.py    pictures that are PNG files already, put into a PDF as they are
 sheet.py     the finished sheet, and how it is saved
 table.py     its figures as CSV or JSON
 """

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 from PIL import Image, ImageDraw, ImageFont
 
+from pinsim.sheets.contact.packed import draw_png
 from pinsim.sheets.lettering import FAINT_INK, INK, PAPER, plain
 
 Codes = NDArray[np.uint8]
@@ -71,6 +72,7 @@ class Page:
 
 
 Fetch = Callable[[Place], Codes]
+FetchPng = Callable[[Place], bytes]
 
 
 @lru_cache(maxsize=32)
@@ -141,7 +143,7 @@ def as_picture(page: Page, px_per_mm: float, fetch: Fetch) -> Codes:
     return np.asarray(image)
 
 
-def write_pdf(file: Any, pages: Sequence[Page], fetch: Fetch, *, title: str) -> None:
+def write_pdf(file: Any, pages: Sequence[Page], fetch_png: FetchPng, *, title: str) -> None:
     """Write pages at their true size; a frame's pixels are kept as they are, letters stay letters.
 
     The ground stays white: whoever prints it has paper.
@@ -161,15 +163,13 @@ def write_pdf(file: Any, pages: Sequence[Page], fetch: Fetch, *, title: str) -> 
         canvas = Canvas(file, invariant=1, pageCompression=1)
         canvas.setTitle(plain(title))
         for page in pages:
-            _draw_page(canvas, page, fetch)
+            _draw_page(canvas, page, fetch_png)
         canvas.save()
     finally:
         rl_config.useA85 = in_letters
 
 
-def _draw_page(canvas: Any, page: Page, fetch: Fetch) -> None:
-    from reportlab.lib.utils import ImageReader
-
+def _draw_page(canvas: Any, page: Page, fetch_png: FetchPng) -> None:
     pt = 1.0 / MM_PER_PT
     canvas.setPageSize((page.width_mm * pt, page.height_mm * pt))
     for thing in page.things:
@@ -191,10 +191,7 @@ def _draw_page(canvas: Any, page: Page, fetch: Fetch) -> None:
             _fill(canvas, FAILED_PAPER)
             canvas.rect(x, top - tall, wide, tall, stroke=1, fill=1)
         else:
-            codes = fetch(thing)
-            rgb = np.ascontiguousarray(np.broadcast_to(codes, (*codes.shape[:2], 3)))
-            reader = ImageReader(Image.fromarray(rgb))
-            canvas.drawImage(reader, x, top - tall, wide, tall)
+            draw_png(canvas, fetch_png(thing), x, top - tall, wide, tall)
             canvas.rect(x, top - tall, wide, tall, stroke=1, fill=0)
     canvas.showPage()
 

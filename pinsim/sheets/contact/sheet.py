@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import Any
 
 from pinsim import files
+from pinsim.batch.draw import codes_of
 from pinsim.batch.needs import Need, nearest_to, sort_key
 from pinsim.batch.store import Store
 from pinsim.errors import DesignError
@@ -92,7 +93,7 @@ class ContactSheet:
         if suffix == ".pdf":
 
             def write(file: Any) -> None:
-                write_pdf(file, self.layout.pages, self._fetch, title=self.description)
+                write_pdf(file, self.layout.pages, self._fetch_png, title=self.description)
 
             files.write_whole(paths[0], write, overwrite=overwrite)
         elif suffix in {".tif", ".tiff"}:
@@ -121,12 +122,10 @@ class ContactSheet:
         )
 
     def _fetch(self, place: Place) -> Codes:
-        key = self.entries[place.frame].key
-        if place.what == "frame":
-            return self._store.codes(key)
-        detail = self._store.detail(key)
-        assert detail is not None
-        return detail
+        return codes_of(self._fetch_png(place))
+
+    def _fetch_png(self, place: Place) -> bytes:
+        return self._store.png(self.entries[place.frame].key, detail=place.what != "frame")
 
 
 def compose(
