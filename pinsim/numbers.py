@@ -175,7 +175,7 @@ def figures(
         mean_wavelength_nm=light.mean_nm,
         cutoff_cycles_mm=camera.hole.greatest_mm / (light.mean_nm * 1e-6 * camera.focal_length_mm),
         corner_deg=camera.corner_deg,
-        corner_falloff_stops=_stops_below(light_share(camera, *camera.far_corner)),
+        corner_falloff_stops=corner_falloff_stops(camera),
         distances=tuple(_at_distance(camera, light, one, best=best) for one in distances_mm),
         times_s=tuple((ev, metered_time_s(camera, ev)) for ev in USUAL_EV),
         places=_places(camera, light, distances_mm[0]) if best else (),
@@ -204,6 +204,11 @@ def plain_figures(result: Figures) -> dict[str, Any]:
     return plain
 
 
+def corner_falloff_stops(camera: Camera) -> float:
+    """Return how many stops darker than the middle the far corner is."""
+    return _stops_below(light_share(camera, *camera.far_corner))
+
+
 def _stops_below(share: float) -> float:
     return abs(math.log2(share)) if share > 0.0 else math.inf
 
@@ -216,8 +221,9 @@ def _details(
     distance_mm: float,
 ) -> list[float]:
     """Return the finest detail of the camera's own hole along directions at a film point."""
+    unlike, which = np.unique(np.array(directions), axis=0, return_inverse=True)
     found = detail_anywhere(
-        np.array(directions),
+        unlike,
         rays=camera.surface.chief_rays(*point_mm),
         opening=camera.opening,
         plate_thickness_mm=camera.plate_thickness_mm,
@@ -226,23 +232,36 @@ def _details(
         contrasts=(CONTRAST,),
         samples=_SAMPLES,
     )
-    return [float(one) for one in found[:, 0]]
+    return [float(one) for one in found[which.ravel(), 0]]
+
+
+def detail_on_axis(
+    camera: Camera, *, distance_mm: float = math.inf, wavelength_nm: float | None = None
+) -> float:
+    """Return the finest detail in the middle, cycles/mm, as figures tell it, and nothing else."""
+    return min(_on_axis(camera, light_for(wavelength_nm, camera.material), distance_mm))
+
+
+def _on_axis(camera: Camera, light: optics.Light, distance_mm: float) -> tuple[float, float]:
+    """Return the finest detail right and up before the hole."""
+    if camera.hole.shape != "round":
+        right, up = _details(camera, light, (0.0, 0.0), [(1.0, 0.0), (0.0, 1.0)], distance_mm)
+        return right, up
+    both = optics.finest_detail(
+        diameter_mm=camera.hole.diameter_mm,
+        focal_length_mm=camera.focal_length_mm,
+        light=light,
+        distance_mm=distance_mm,
+        contrast=CONTRAST,
+    )
+    return both, both
 
 
 def _at_distance(
     camera: Camera, light: optics.Light, distance_mm: float, *, best: bool
 ) -> AtDistance:
     diameter, depth = camera.hole.diameter_mm, camera.focal_length_mm
-    if camera.hole.shape == "round":
-        right = up = optics.finest_detail(
-            diameter_mm=diameter,
-            focal_length_mm=depth,
-            light=light,
-            distance_mm=distance_mm,
-            contrast=CONTRAST,
-        )
-    else:
-        right, up = _details(camera, light, (0.0, 0.0), [(1.0, 0.0), (0.0, 1.0)], distance_mm)
+    right, up = _on_axis(camera, light, distance_mm)
     return AtDistance(
         distance_mm=distance_mm,
         spot_mm=optics.spot_diameter_mm(

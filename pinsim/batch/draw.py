@@ -15,7 +15,7 @@ from pinsim.batch.spool import Source
 from pinsim.camera import Camera
 from pinsim.errors import DesignError, PinsimError
 from pinsim.exposure import metered_time_s
-from pinsim.numbers import figures, places
+from pinsim.numbers import corner_falloff_stops, detail_on_axis, places
 from pinsim.render import kept
 from pinsim.render.plan import make_plan
 from pinsim.render.preview import preview
@@ -168,7 +168,7 @@ def _figures(frame: Frame, scene: Scene) -> dict[str, Any]:
 
 @lru_cache(maxsize=64)
 def _of_design(camera: Camera, far_mm: float, wavelength_nm: float | None) -> dict[str, Any]:
-    found = figures(camera, distances_mm=(far_mm,), wavelength_nm=wavelength_nm, best=False)
+    detail = detail_on_axis(camera, distance_mm=far_mm, wavelength_nm=wavelength_nm)
     at = {
         place.name: min(
             place.right_cycles_mm,
@@ -179,15 +179,15 @@ def _of_design(camera: Camera, far_mm: float, wavelength_nm: float | None) -> di
         for place in places(camera, distance_mm=far_mm, wavelength_nm=wavelength_nm)
     }
     return {
-        "f_number": found.f_number,
-        "horizontal_view_deg": found.horizontal_view_deg,
-        "vertical_view_deg": found.vertical_view_deg,
-        "diagonal_view_deg": found.diagonal_view_deg,
+        "f_number": camera.f_number,
+        "horizontal_view_deg": camera.horizontal_view_deg,
+        "vertical_view_deg": camera.vertical_view_deg,
+        "diagonal_view_deg": camera.diagonal_view_deg,
         "figures_for_distance_mm": far_mm,
-        "detail_cycles_mm": found.far.detail_cycles_mm,
+        "detail_cycles_mm": detail,
         "corner_cycles_mm": at["corner"],
-        "frame_cycles_mm": min(found.far.detail_cycles_mm, *at.values()),
-        "corner_falloff_stops": _finite(found.corner_falloff_stops),
+        "frame_cycles_mm": min(detail, *at.values()),
+        "corner_falloff_stops": _finite(corner_falloff_stops(camera)),
     }
 
 

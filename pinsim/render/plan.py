@@ -35,7 +35,7 @@ HEADROOM = 1.06
 # this share of the difference between the true and the imagined surroundings.
 TAIL_SHARE = 3e-3
 LARGE_TAIL_SHARE = 6e-3
-LARGE_FRAME_PX = 500_000
+LARGE_FRAME_PX = 250_000
 # A margin this wide costs little whatever the frame.
 CHEAP_MARGIN_PX = 250
 # Round holes whose diameters lie within this step share margins and fields; the grid's pitch in steps.
