@@ -16,5 +16,6 @@ kernels.py     how the hole draws all over the film: a mean and some modes (for 
 frequencies.py kernels at every frequency of the grid (for spread)
 fourier.py     transforms of whole pictures (for spread)
 kept.py        what a second look at the same scene need not make again
+panorama.py, sphere_grid.py  what project does for panoramas
 resample.py    band-limited resampling along one axis, as block-banded matrices (for project)
 """
