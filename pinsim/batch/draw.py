@@ -15,6 +15,7 @@ from pinsim.batch.spool import Source
 from pinsim.camera import Camera
 from pinsim.errors import DesignError, PinsimError
 from pinsim.exposure import metered_time_s
+from pinsim.files import quick_png
 from pinsim.numbers import corner_falloff_stops, detail_on_axis, places
 from pinsim.render import kept
 from pinsim.render.plan import make_plan
@@ -93,7 +94,7 @@ def _drawn(frame: Frame, source: Source) -> Drawn:
         "time_s": None if picture.exposed is None else picture.exposed.time_s,
         **_figures(frame, scene),
     }
-    return Drawn(_png(codes), None if detail is None else _png(detail), about)
+    return Drawn(quick_png(codes), None if detail is None else quick_png(detail), about)
 
 
 def _leave_others(frame: Frame, key: str, scene: Scene) -> None:
@@ -193,23 +194,6 @@ def _of_design(camera: Camera, far_mm: float, wavelength_nm: float | None) -> di
 
 def _finite(value: float) -> float | None:
     return value if math.isfinite(value) else None
-
-
-def _png(codes: Codes) -> bytes:
-    import imagecodecs
-
-    # Kept for an hour: one filter instead of the best for each row, and short runs only, take a third
-    # of the usual time.
-    kinds = imagecodecs.PNG
-    plain = codes[..., 0] if codes.shape[2] == 1 else codes
-    return bytes(
-        imagecodecs.png_encode(
-            np.ascontiguousarray(plain),
-            level=1,
-            strategy=kinds.STRATEGY.RLE,
-            filter=kinds.FILTER.UP,
-        )
-    )
 
 
 def codes_of(png: bytes) -> Codes:
