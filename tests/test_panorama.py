@@ -12,8 +12,8 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from PIL import Image, PngImagePlugin
+from reference.bent_film import BentFilm
 
-from pinsim.camera import Camera, Film, Hole
 from pinsim.errors import SceneError
 from pinsim.render.plan import make_plan
 from pinsim.render.preview import preview
@@ -25,41 +25,14 @@ from pinsim.scene.photo import photo_from_linear
 
 LARGEST_ERROR = 0.004
 LEAST_PSNR_DB = 55.0  # of encoded values; an eighth of an 8-bit step is 66 dB
-FILMS = {  # focal length, width, height, bend radius, bend axis, shift right, rise
-    "flat": (20.0, 16.0, 12.0, math.inf, "vertical", 0.0, 0.0),
-    "flat, raised and moved aside": (20.0, 16.0, 12.0, math.inf, "vertical", 9.0, 12.0),
-    "flat to 70 degrees": (8.0, 34.0, 28.0, math.inf, "vertical", 0.0, 0.0),
-    "arc about the hole": (20.0, 44.0, 12.0, 20.0, "vertical", 0.0, 0.0),
-    "round tin": (20.0, 40.0, 12.0, 10.0, "vertical", 0.0, 0.0),
-    "round tin, lying": (20.0, 12.0, 40.0, 10.0, "horizontal", 0.0, 0.0),
+FILMS = {
+    "flat": BentFilm(20.0, 16.0, 12.0),
+    "flat, raised and moved aside": BentFilm(20.0, 16.0, 12.0, math.inf, "vertical", 9.0, 12.0),
+    "flat to 70 degrees": BentFilm(8.0, 34.0, 28.0),
+    "arc about the hole": BentFilm(20.0, 44.0, 12.0, 20.0),
+    "round tin": BentFilm(20.0, 40.0, 12.0, 10.0),
+    "round tin, lying": BentFilm(20.0, 12.0, 40.0, 10.0, "horizontal"),
 }
-
-
-def camera_of(film, hole_mm=1.2):
-    z, width, height, radius, axis, right, up = FILMS[film]
-    return Camera(
-        focal_length_mm=z,
-        hole=Hole(diameter_mm=hole_mm),
-        film=Film(
-            width_mm=width,
-            height_mm=height,
-            bend_radius_mm=radius,
-            bend_axis=axis,
-            shift_right_mm=right,
-            shift_up_mm=up,
-        ),
-    )
-
-
-def points_mm(film, right, up):
-    z, _, _, radius, axis, _, _ = FILMS[film]
-    right, up = np.broadcast_arrays(right, up)
-    if math.isinf(radius):
-        return np.stack([right, up, np.full(right.shape, z)], axis=-1)
-    bent, other = (right, up) if axis == "vertical" else (up, right)
-    aside, ahead = radius * np.sin(bent / radius), z - radius + radius * np.cos(bent / radius)
-    first, second = (aside, other) if axis == "vertical" else (other, aside)
-    return np.stack([first, second, ahead], axis=-1)
 
 
 def looked_at(direction, yaw_deg, pitch_deg, roll_deg):
@@ -135,7 +108,7 @@ def summed(light, film, plan, look_at, rows, columns, sub=4):
 
     up, down = axis(plan.up_mm(), rows)
     right, across = axis(plan.right_mm(), columns)
-    direction = looked_at(points_mm(film, right[None, :], up[:, None]), *look_at)
+    direction = looked_at(FILMS[film].points_mm(right[None, :], up[:, None]), *look_at)
     return down @ light(direction) @ across.T
 
 
@@ -176,7 +149,7 @@ LOOKS = [
 )
 def test_finer_panoramas_are_averaged_right(film, look_at):
     """Computed independently. At most 70 dB is left by the picture's own pixels."""
-    camera = camera_of(film)
+    camera = FILMS[film].camera()
     light = waves(12.0)
     scene = panorama_scene(sphere_of(light, 500), look_at_deg=look_at)
     plan = make_plan(scene, camera, wavelength_nm=550.0)
@@ -191,7 +164,7 @@ def test_finer_panoramas_are_averaged_right(film, look_at):
 @pytest.mark.parametrize("look_at", LOOKS, ids=["ahead", "behind", "zenith", "nadir", "aslant"])
 def test_coarser_panoramas_are_interpolated_smoothly(look_at):
     """Computed independently: a scene of at most 1/6 cycle per pixel comes through."""
-    camera = camera_of("flat")
+    camera = FILMS["flat"].camera()
     light = waves(6.0)
     scene = panorama_scene(sphere_of(light, 180), look_at_deg=look_at)
     plan = make_plan(scene, camera, wavelength_nm=550.0)
@@ -216,7 +189,7 @@ def test_a_grating_finer_than_the_film_leaves_nothing(times, slant_deg, look_at)
     out first. times : its frequency over Nyquist's. The picture's pixels are samples here, as means of
     pixels would dim it unevenly where they are wedges round a pole.
     """
-    camera = camera_of("flat", 1.5)
+    camera = FILMS["flat"].camera(1.5)
     blank = panorama_scene(np.ones((4, 8)))
     pitch = make_plan(blank, camera, wavelength_nm=550.0).pitch_mm
     cycles_per_rad = times * 0.5 / pitch * 20.0
@@ -242,7 +215,7 @@ def test_a_pinwheel_round_the_zenith_fades():
     Sampling theorem again: within r pixels of the pole, m spokes have more than m/(2 pi r) cycles per
     pixel, here 1.3 times the Nyquist frequency and more.
     """
-    camera = camera_of("flat", 1.5)
+    camera = FILMS["flat"].camera(1.5)
     reach_px, spokes = 16, 82
 
     def light(direction):
@@ -264,7 +237,7 @@ def test_a_pinwheel_round_the_zenith_fades():
 def test_a_plain_wall_stays_plain(film, look_at, rows):
     """Averages of one value are that value, also over the poles and behind."""
     scene = panorama_scene(np.full((rows, 2 * rows), 0.37), look_at_deg=look_at)
-    plan = make_plan(scene, camera_of(film, 1.5), wavelength_nm=550.0)
+    plan = make_plan(scene, FILMS[film].camera(1.5), wavelength_nm=550.0)
     view = project(scene, plan)
     np.testing.assert_allclose(view.light[plan.inside], 0.37, atol=1e-5)
     assert view.covered.all()
@@ -302,7 +275,7 @@ def brightest_mm(picture):
 def test_look_at_turns_the_camera(spot, look_at, expected_deg):
     """On flat film a ray at an angle from the axis lands at z tan of it."""
     scene = panorama_scene(spot_at(*spot), look_at_deg=(*look_at, 0.0)[:3])
-    found = brightest_mm(preview(scene, camera_of("flat"), wavelength_nm=550.0))
+    found = brightest_mm(preview(scene, FILMS["flat"].camera(), wavelength_nm=550.0))
     expected = [20.0 * math.tan(math.radians(angle)) for angle in expected_deg]
     assert found == pytest.approx(expected, abs=0.02)
 
@@ -311,9 +284,9 @@ def test_a_leaning_panorama_is_levelled():
     """A camera that pitched up by 12 degrees has the horizon 12 degrees below its middle."""
     place = PanoramaPlace(full_width_px=720.0, full_height_px=360.0, pitch_deg=12.0)
     scene = panorama_scene(spot_at(0.0, -12.0), panorama=place)
-    assert brightest_mm(preview(scene, camera_of("flat"), wavelength_nm=550.0)) == pytest.approx(
-        (0.0, 0.0), abs=0.02
-    )
+    assert brightest_mm(
+        preview(scene, FILMS["flat"].camera(), wavelength_nm=550.0)
+    ) == pytest.approx((0.0, 0.0), abs=0.02)
 
 
 def test_a_rolled_panorama_is_levelled():
@@ -321,7 +294,7 @@ def test_a_rolled_panorama_is_levelled():
     place = PanoramaPlace(full_width_px=720.0, full_height_px=360.0, roll_deg=90.0)
     # The horizon's right side has turned up: what is really 10 degrees to the right is at the top.
     scene = panorama_scene(spot_at(0.0, 10.0), panorama=place)
-    found = brightest_mm(preview(scene, camera_of("flat"), wavelength_nm=550.0))
+    found = brightest_mm(preview(scene, FILMS["flat"].camera(), wavelength_nm=550.0))
     assert found == pytest.approx((20.0 * math.tan(math.radians(10.0)), 0.0), abs=0.02)
 
 
@@ -345,7 +318,7 @@ def test_a_part_shows_what_the_whole_does(beyond):
         look_at_deg=look_at,
         beyond=beyond,
     )
-    plan = make_plan(full, camera_of("arc about the hole", 2.5), wavelength_nm=550.0)
+    plan = make_plan(full, FILMS["arc about the hole"].camera(2.5), wavelength_nm=550.0)
     seen = project(cut, plan)
     assert 0.5 < seen.covered_share < 0.999
     expected = project(full, plan).light[plan.inside]
@@ -393,7 +366,7 @@ def near_above(near_mm=60.0, far_mm=1000.0):
 def test_distances_of_a_panorama_are_along_its_rays():
     """At r along a ray is r cos(angle) along the hole's axis, so 1/zo = 1/(r cos)."""
     scene = panorama_scene(np.ones((90, 180)), distance=near_above())
-    plan = make_plan(scene, camera_of("flat", 2.0), wavelength_nm=550.0)
+    plan = make_plan(scene, FILMS["flat"].camera(2.0), wavelength_nm=550.0)
     inverse = project(scene, plan).inverse_distance
     right, up = plan.right_mm()[None, :], plan.up_mm()[:, None]
     cosine = 20.0 / np.sqrt(right**2 + up**2 + 400.0)
@@ -403,12 +376,12 @@ def test_distances_of_a_panorama_are_along_its_rays():
 
 
 def test_film_behind_the_holes_plane_sees_nothing_near():
-    camera = camera_of("round tin", 2.5)
+    camera = FILMS["round tin"].camera(2.5)
     far = panorama_scene(np.ones((90, 180)))
     # Kernels for every distance take long on a bent film and are not looked at here.
     plan = replace(make_plan(far, camera, wavelength_nm=550.0), varied=True)
     inverse = project(replace(far, distance=near_above()), plan).inverse_distance
-    ahead = points_mm("round tin", plan.right_mm(), 0.0)[:, 2]
+    ahead = FILMS["round tin"].points_mm(plan.right_mm(), 0.0)[:, 2]
     behind = ahead <= 0.0
     assert (inverse[:, behind] == 0.0).all()
     assert np.isfinite(inverse).all()

@@ -1,65 +1,35 @@
 """A straight line of the scene lies on the film where geometry says, from photos and panoramas alike.
 
 A straight line and the hole's middle span a plane; where that plane cuts the film is the line's image.
-Film points are (R sin(u/R), v, z - R + R cos(u/R)) on a cylinder and (u, v, z) on flat film, so the
-image of the plane n . p = 0 is v = -(n_x x + n_z z) / n_y, or for a steep line and flat film
-u = -(n_y v + n_z z) / n_x: elementary geometry, derived here. Light is measured as projected, before
-falloff and blur.
+Film points are those of reference/bent_film.py, so the image of the plane n . p = 0 is
+v = -(n_x x + n_z z) / n_y, or for a steep line and flat film u = -(n_y v + n_z z) / n_x: elementary
+geometry, derived here. Light is measured as projected, before falloff and blur.
 """
 
 import math
 
 import numpy as np
 import pytest
+from reference.bent_film import BentFilm
 
-from pinsim.camera import Camera, Film, Hole
 from pinsim.render.plan import make_plan
 from pinsim.render.project import project
 from pinsim.scene import Scene
 from pinsim.scene.photo import photo_from_linear
 
 FOCAL_MM = 20.0
-FILMS = {  # width, height, bend radius, bend axis, shift right, rise
-    "flat": (16.0, 12.0, math.inf, "vertical", 0.0, 0.0),
-    "flat, raised and moved aside": (16.0, 12.0, math.inf, "vertical", 6.0, 5.0),
-    "arc about the hole": (26.0, 12.0, 20.0, "vertical", 0.0, 0.0),
-    "arc about the hole, off centre": (20.0, 12.0, 20.0, "vertical", 5.0, 4.0),
-    "round tin": (22.0, 12.0, 10.0, "vertical", 0.0, 0.0),
-    "round tin, lying": (12.0, 22.0, 10.0, "horizontal", 0.0, 0.0),
-    "round tin, off centre": (16.0, 12.0, 10.0, "vertical", -4.0, 3.0),
+FILMS = {
+    "flat": BentFilm(FOCAL_MM, 16.0, 12.0),
+    "flat, raised and moved aside": BentFilm(FOCAL_MM, 16.0, 12.0, math.inf, "vertical", 6.0, 5.0),
+    "arc about the hole": BentFilm(FOCAL_MM, 26.0, 12.0, 20.0),
+    "arc about the hole, off centre": BentFilm(FOCAL_MM, 20.0, 12.0, 20.0, "vertical", 5.0, 4.0),
+    "round tin": BentFilm(FOCAL_MM, 22.0, 12.0, 10.0),
+    "round tin, lying": BentFilm(FOCAL_MM, 12.0, 22.0, 10.0, "horizontal"),
+    "round tin, off centre": BentFilm(FOCAL_MM, 16.0, 12.0, 10.0, "vertical", -4.0, 3.0),
 }
 # Photo pixels per film pixel near the axis, about: averaged, and interpolated.
 SCALES = {"finer than the film": 1.9, "coarser than the film": 0.4}
 LARGEST_ERROR_PX = 0.02
-
-
-def camera_of(film):
-    width, height, radius, axis, right, up = FILMS[film]
-    return Camera(
-        focal_length_mm=FOCAL_MM,
-        hole=Hole(diameter_mm=1.2),
-        film=Film(
-            width_mm=width,
-            height_mm=height,
-            bend_radius_mm=radius,
-            bend_axis=axis,
-            shift_right_mm=right,
-            shift_up_mm=up,
-        ),
-    )
-
-
-def points_mm(film, right, up):
-    """Return the film points of coordinates that spread against each other, (..., 3)."""
-    _, _, radius, axis, _, _ = FILMS[film]
-    right, up = np.broadcast_arrays(right, up)
-    if math.isinf(radius):
-        return np.stack([right, up, np.full(right.shape, FOCAL_MM)], axis=-1)
-    bent, other = (right, up) if axis == "vertical" else (up, right)
-    aside = radius * np.sin(bent / radius)
-    ahead = FOCAL_MM - radius + radius * np.cos(bent / radius)
-    first, second = (aside, other) if axis == "vertical" else (other, aside)
-    return np.stack([first, second, ahead], axis=-1)
 
 
 def soft_line(off, sigma):
@@ -107,7 +77,7 @@ def crossings(film, plan, normal, *, steep):
     picked = across[plan.inside[0 if steep else 1]][6:-6:7]
 
     def off(place):
-        points = points_mm(film, *((place, picked) if steep else (picked, place)))
+        points = FILMS[film].points_mm(*((place, picked) if steep else (picked, place)))
         return points @ normal
 
     inner = along[plan.inside[1 if steep else 0]]
@@ -132,13 +102,14 @@ def middle_of(profile, near):
 
 
 def worst_error_px(film, make, scale, *, steep):
-    camera = camera_of(film)
+    camera = FILMS[film].camera()
     blank = Scene.from_light(np.ones((4, 4)), horizontal_view_deg=60.0)
     pitch = make_plan(blank, camera, wavelength_nm=550.0).pitch_mm
     per_radian = scale * FOCAL_MM / pitch
-    width, height, _, _, right, up = FILMS[film]
+    width, height = FILMS[film].width, FILMS[film].height
+    right, up = FILMS[film].shift_right, FILMS[film].rise
     # A slanting plane through the middle of the frame.
-    middle = points_mm(film, np.float64(right + 0.04 * width), np.float64(up + 0.03 * height))
+    middle = FILMS[film].points_mm(np.float64(right + 0.04 * width), np.float64(up + 0.03 * height))
     lean = np.array([1.0, 0.21, 0.1]) if steep else np.array([0.17, 1.0, 0.1])
     normal = lean - middle * (lean @ middle) / (middle @ middle)
     normal /= np.linalg.norm(normal)
