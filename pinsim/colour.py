@@ -48,15 +48,22 @@ def _encode_table(top: int) -> NDArray[np.uint16]:
 
 
 def encode_8bit(linear: Float) -> NDArray[np.uint8]:
-    """Encode linear light, any shape, to sRGB codes 0..255, at most one code from exact rounding."""
+    """Encode linear light, any shape, to sRGB codes 0..255, at most one code from exact rounding.
+
+    NaN is black.
+    """
     table = _encode_table(255).astype(np.uint8)
     flat = np.ascontiguousarray(linear).reshape(-1)
     codes = np.empty(flat.shape, np.uint8)
 
     def encode(start: int) -> None:
         part = slice(start, start + _CHUNK)
-        root = np.sqrt(np.clip(flat[part], 0.0, 1.0))
-        index = (root * np.float32(_STEPS) + np.float32(0.5)).astype(np.uint16)
+        root = np.fmax(flat[part], np.float32(0.0))
+        np.minimum(root, np.float32(1.0), out=root)
+        np.sqrt(root, out=root)
+        root *= np.float32(_STEPS)
+        root += np.float32(0.5)
+        index = root.astype(np.uint16)
         np.take(table, index, out=codes[part], mode="clip")
 
     with ThreadPoolExecutor(THREADS) as pool:

@@ -62,8 +62,8 @@ def develop(
     the exposure for a white scene was given. tone "negative" is a plain inversion of the tones.
     Returns uint8 or uint16 of the same shape.
     """
-    seen = np.nan_to_num(exposure * np.float32(gain), nan=0.0)
-    codes = encode_8bit(seen) if bits == 8 else encode_16bit(seen)
+    given = exposure if gain == 1.0 else exposure * np.float32(gain)
+    codes = encode_8bit(given) if bits == 8 else encode_16bit(np.nan_to_num(given, nan=0.0))
     if tone == "negative":
         codes = np.iinfo(codes.dtype).max - codes
     return _hatched(codes, exposure, bits)
