@@ -45,6 +45,7 @@ async (value) => {
 def main(rounds: int = 40) -> None:
     """Print the table."""
     as_installed()
+    _once()
     print(f"load {' '.join(f'{one:.1f}' for one in os.getloadavg())}, {os.cpu_count()} cores, ms")
     for name, state in (
         ("one distance", "#hole_mm=0.3&frame=6x6&depth_mm=60&distance_mm=infinity"),
@@ -75,6 +76,15 @@ def main(rounds: int = 40) -> None:
                 + ", ".join(f"{p} % {_percentile(all_ms, p):.0f}" for p in (50, 75, 95))
             )
     print(f"load {' '.join(f'{one:.1f}' for one in os.getloadavg())}")
+
+
+def _once() -> None:
+    """Start the server and look at the page once: all modules are compiled then."""
+    with tempfile.TemporaryDirectory() as folder, browser() as started:
+        page = started.new_page()
+        with live("sample:courtyard", folder=Path(folder)) as address:
+            page.goto(address)
+            settled(page)
 
 
 def _percentile(values: list[float], percent: float) -> float:
