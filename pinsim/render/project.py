@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from pinsim.camera import Film
 from pinsim.render.plan import RenderPlan
 from pinsim.render.resample import ALIAS_FREE, Block, fold, make_blocks, resample_line
 from pinsim.scene import DistanceMap, Scene
@@ -29,6 +30,7 @@ class FilmView:
     inverse_distance : (rows, columns), 1/mm, or None when the whole scene has one distance.
     covered : (rows, columns) of the frame, True where the photo shows what the film sees.
     compensate : the light was dimmed by resample.response, to be given back while spreading.
+    exact_share : how much of the frame the photo covers, where geometry tells it; else None.
     unlit_share : how much of the frame no light reaches, 0 to 1; known after `illuminate`.
     """
 
@@ -37,12 +39,14 @@ class FilmView:
     inverse_distance: Float | None
     covered: NDArray[np.bool_]
     compensate: bool
+    exact_share: float | None = None
     unlit_share: float = 0.0
 
     @property
     def covered_share(self) -> float:
-        """How much of the frame the photo covers, 0 to 1."""
-        return float(self.covered.mean())
+        """How much of the frame the photo covers, 0 to 1; the same however finely it is drawn."""
+        counted = float(self.covered.mean())
+        return counted if self.exact_share is None or counted == 1.0 else self.exact_share
 
 
 def project(scene: Scene, plan: RenderPlan) -> FilmView:
@@ -87,7 +91,20 @@ def _project_planes(scene: Scene, plan: RenderPlan) -> FilmView:
         inverse_distance=_distances(scene, plan, np.rint(row)[:, None], np.rint(column)[None, :]),
         covered=seen_rows[:, None] & seen_columns[None, :],
         compensate=step >= 1.0,
+        exact_share=_covered_share(plan.camera.film, columns / scale, rows / scale),
     )
+
+
+def _covered_share(film: Film, width_mm: float, height_mm: float) -> float:
+    """Return how much of a flat frame a photo of this size covers, its middle on the axis."""
+    share = 1.0
+    for shift, side, covered in (
+        (film.shift_right_mm, film.width_mm, width_mm),
+        (film.shift_up_mm, film.height_mm, height_mm),
+    ):
+        low, high = max(shift - 0.5 * side, -0.5 * covered), min(shift + 0.5 * side, 0.5 * covered)
+        share *= max(0.0, high - low) / side
+    return min(share, 1.0)
 
 
 def _lay_rows(
