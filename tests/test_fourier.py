@@ -82,12 +82,32 @@ def test_a_part_that_does_otherwise_is_not_used(monkeypatch, other):
     assert fourier.compiled_transform() is None
 
 
+def _told_by(code):
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
+    assert (done.returncode, done.stderr) == (0, "")
+    return done.stdout.split()
+
+
 def test_the_renderer_loads_without_scipys_public_door():
     if fourier._compiled is None:
         pytest.skip("this scipy keeps its compiled transform elsewhere")
-    code = "import sys, pinsim.render.preview; print([m for m in sys.modules if m.startswith('scipy')])"
-    told = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
-    assert told.stdout.strip() == "[]"
+    code = "import sys, pinsim.render.preview; print('scipy' in sys.modules)"
+    assert _told_by(code) == ["False"]
+
+
+@pytest.mark.parametrize("first", ["pinsim.render.fourier", "scipy.fft"])
+def test_both_doors_open_in_one_process_in_either_order(first):
+    """They share one compiled module: loaded twice, some versions of it end in a crash."""
+    second = {"scipy.fft", "pinsim.render.fourier"} - {first}
+    code = (
+        f"import {first}, {second.pop()}, sys, numpy\n"
+        "plane = numpy.ones((4, 6), numpy.float32)\n"
+        "from pinsim.render import fourier\n"
+        "print(numpy.allclose(fourier.rfft2(plane), scipy.fft.rfft2(plane)))\n"
+        "from scipy.fft._pocketfft import pypocketfft\n"
+        "print(fourier._compiled in (None, pypocketfft))"
+    ).replace("print(numpy.allclose", "import scipy.fft\nprint(numpy.allclose")
+    assert _told_by(code) == ["True", "True"]
 
 
 def test_one_picture_is_drawn_the_same_by_either_door(monkeypatch):

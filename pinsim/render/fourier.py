@@ -18,24 +18,28 @@ from numpy.typing import NDArray
 Float = NDArray[np.float32]
 Spectrum = NDArray[np.complex64]
 
-_NAME = "pypocketfft"
+# Loaded under its own name, so that scipy.fft, if anybody imports it later, finds it loaded: such a
+# module cannot be in one process twice.
+_PACKAGE, _NAME = "scipy.fft._pocketfft", "pypocketfft"
 _BY_ALL = 2  # its mark for a result divided by the number of points, as the inverse is
 
 
 def compiled_transform() -> Any | None:
     """Return scipy's compiled transform, or None when it is not where it has been so far."""
-    loaded = sys.modules.get(f"scipy.fft._pocketfft.{_NAME}")
+    name = f"{_PACKAGE}.{_NAME}"
+    loaded = sys.modules.get(name)
     if loaded is None:
         try:
             scipy = importlib.util.find_spec("scipy")
             if scipy is None or scipy.origin is None:
                 return None
             folder = Path(scipy.origin).parent / "fft" / "_pocketfft"
-            found = PathFinder.find_spec(_NAME, [str(folder)])
+            found = PathFinder.find_spec(name, [str(folder)])
             if found is None or found.loader is None:
                 return None
             loaded = importlib.util.module_from_spec(found)
             found.loader.exec_module(loaded)
+            sys.modules[name] = loaded
         except (ImportError, OSError, ValueError):
             return None
     return loaded if _as_expected(loaded) else None
